@@ -13,8 +13,8 @@ fn case_folder() -> PathBuf {
     Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/cases/table")
 }
 
-/// Every `NAME.csv` reads as `NAME.expected.json` says. The expected files are written and judged
-/// by hand from interface.md; there is no outside source.
+/// Every `NAME.csv` reads as `NAME.expected.json` says. The expected files were judged one by one
+/// against the rules for a readings file; there is no outside source.
 #[test]
 fn cases() {
     let mut names: Vec<PathBuf> = std::fs::read_dir(case_folder())
@@ -469,5 +469,19 @@ fn words_of_strength_are_words() {
     assert_eq!(
         table.samples[0].readings[0].strength,
         Some(Strength::Word(StrengthWord::Dominant))
+    );
+}
+
+/// A table turned on its side has as many columns as another has rows.
+#[test]
+fn a_very_wide_header_is_refused_in_passing() {
+    let header: Vec<String> = (0..50_000).map(|column| format!("{column}.5")).collect();
+    let table = read_table("wide.csv", format!("{}\n1\n", header.join(",")).as_bytes());
+    assert!(table.is_refused());
+    assert!(
+        table
+            .refused
+            .iter()
+            .all(|refusal| refusal.message.len() < 1000)
     );
 }

@@ -2,6 +2,7 @@
 
 use super::TableRemark;
 use super::quote::{clean_name, quoted, shorten};
+use std::collections::HashSet;
 
 /// A unit that stands in a header or behind a number.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -151,7 +152,7 @@ pub fn recognised(cells: &[String]) -> usize {
 /// Understands a header. `filled` tells whether a column holds anything below its name.
 pub fn read_header(cells: &[String], filled: impl Fn(usize) -> bool) -> Header {
     let mut header = Header::default();
-    let mut seen: Vec<String> = Vec::new();
+    let mut seen: HashSet<String> = HashSet::new();
     let unit = cells.iter().find_map(|cell| match known(&normalise(cell)) {
         Some(Column::Position(unit)) => Some(unit),
         _ => None,
@@ -193,7 +194,7 @@ pub fn read_header(cells: &[String], filled: impl Fn(usize) -> bool) -> Header {
                 }),
             }
         }
-        seen.push(key);
+        seen.insert(key);
         header.names.push(name);
         header.columns.push(meaning);
     }

@@ -7,6 +7,7 @@
 mod decode;
 mod header;
 mod number;
+mod owner;
 mod quote;
 mod records;
 mod row;
@@ -181,7 +182,7 @@ pub struct Table {
     pub refused_samples: BTreeSet<String>,
     /// Remarks, in order of columns.
     pub remarks: Vec<TableRemark>,
-    /// `#` comment lines without the mark, in order.
+    /// `#` comment lines without the mark, in order; else as written, not escaped.
     pub comments: Vec<String>,
 }
 

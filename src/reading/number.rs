@@ -140,19 +140,20 @@ pub fn suggest(text: &str, decimal: char, fits: impl Fn(f64) -> bool) -> Option<
         .replace(['O', 'o'], "0")
         .replace(['l', 'I', 'i'], "1");
     let bare = joined.trim_matches(|c: char| !c.is_ascii_digit() && !matches!(c, '.' | ','));
-    let last_sign = joined.rfind(['.', ',']);
+    // With both signs the last is the decimal one; a sign met twice only groups.
+    let decimal_at = joined
+        .rfind(['.', ','])
+        .filter(|_| joined.contains('.') && joined.contains(','));
     let ungrouped: String = joined
         .char_indices()
-        .filter(|(at, c)| !matches!(c, '.' | ',') || (Some(*at) == last_sign))
+        .filter(|(at, c)| !matches!(c, '.' | ',') || Some(*at) == decimal_at)
         .map(|(_, c)| c)
         .collect();
-    let whole = joined.replace(['.', ','], "");
     let repairs = [
         joined.clone(),
         digits_for_letters,
         bare.to_owned(),
         ungrouped,
-        whole,
     ];
     repairs
         .into_iter()
@@ -177,6 +178,9 @@ pub fn remedy(text: &str) -> Option<&'static str> {
     let text = normalise(text);
     if text.contains('±') || text.contains("+/-") {
         return Some("put the uncertainty in a column of its own");
+    }
+    if text.contains([';', '\t']) {
+        return Some("separate the header as the rows are separated");
     }
     let halves = text.split_once('-').or_else(|| text.split_once(".."));
     let is_number = |part: &str| matches!(shape(part), Shape::Number(..));
@@ -248,6 +252,14 @@ mod tests {
         assert_eq!(suggest_nm("~589,3?").as_deref(), Some("589.3"));
         assert_eq!(suggest_nm("1,589.3").as_deref(), Some("1589.3"));
         assert_eq!(suggest_nm("yellow"), None);
+        assert_eq!(
+            suggest("1,234,567.8", '.', |v| v > 0.0).as_deref(),
+            Some("1234567.8")
+        );
+        assert_eq!(
+            suggest("1,234,567", '.', |v| v > 0.0).as_deref(),
+            Some("1234567")
+        );
         assert_eq!(
             suggest("5'893", ',', |v| v > 1000.0).as_deref(),
             Some("5893")

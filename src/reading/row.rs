@@ -148,7 +148,7 @@ fn read_position(cell: &str, unit: Unit, notation: Notation) -> Result<Position,
 fn out_of_range(cell: &str, value: f64, unit: Unit, decimal: char) -> String {
     let limits = match unit {
         Unit::Angstrom => "1000-20000 angstrom",
-        Unit::PerCentimetre => "5000-100000 cm-1 (100-2000 nm)",
+        Unit::PerCentimetre => "5000-100000 cm-1, that is 100-2000 nm",
         _ => "100-2000 nm",
     };
     let fault = format!("{} is outside {limits}", quoted(cell));

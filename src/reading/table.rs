@@ -3,14 +3,14 @@
 use super::decode::decode;
 use super::header::{Column, Header, read_header, recognised};
 use super::number::{Shape, may_be_grouped, shape, split_unit};
-use super::quote::{clean_name, escape_control, quoted, shorten};
+use super::owner::Owners;
+use super::quote::{quoted, shorten};
 use super::records::{Record, split};
 use super::row::{Notation, read_row};
 use super::{Dialect, Reading, Refusal, Sample, Strength, Table};
 use sha2::{Digest, Sha256};
 use std::collections::{BTreeSet, HashMap};
 use std::fmt::Write;
-use std::path::Path;
 
 /// Reads a table of readings.
 ///
@@ -83,13 +83,15 @@ fn read_text(table: &mut Table, text: &str) {
     };
     table.dialect.separator = records.separator;
     table.comments = records.comments;
-    let Some((first, rows)) = records.rows.split_first() else {
+    let mut rows = records.rows.into_iter();
+    let Some(first) = rows.next() else {
         return refuse_file(
             table,
             None,
             "no readings: the file holds no table (name the columns in the first line)".into(),
         );
     };
+    let mut rows: Vec<Record> = rows.collect();
     let filled = |column: usize| {
         rows.iter().any(|row| {
             row.cells
@@ -121,22 +123,20 @@ fn read_text(table: &mut Table, text: &str) {
             "no readings: nothing follows the header (give one reading a row)".into(),
         );
     }
-    let rows = trim_rows(rows, header.names.len());
+    trim_rows(&mut rows, header.names.len());
     let notation = survey(table, &header, &rows);
     table.dialect.decimal_sign = notation.decimal;
     read_rows(table, &header, notation, &rows);
 }
 
 /// Spreadsheets fill rows up with empty cells; those beyond the header go.
-fn trim_rows(rows: &[Record], width: usize) -> Vec<Record> {
-    let mut rows = rows.to_vec();
-    for row in &mut rows {
+fn trim_rows(rows: &mut [Record], width: usize) {
+    for row in rows {
         while row.cells.len() > width && row.cells.last().is_some_and(|cell| cell.trim().is_empty())
         {
             row.cells.pop();
         }
     }
-    rows
 }
 
 /// Finds the decimal sign of the file; two of them refuse it.
@@ -238,8 +238,6 @@ fn read_rows(table: &mut Table, header: &Header, notation: Notation, rows: &[Rec
                         fault.message,
                     );
                 }
-                // Even where no position column exists and nothing of its own is wrong with the
-                // row, the file is refused for that, and the row with it.
             }
         }
     }
@@ -339,85 +337,4 @@ fn refuse_mixed_strengths(table: &mut Table, header: &Header, rows: &[Record]) {
         );
         refuse_row(table, &sample, row, cell, message);
     }
-}
-
-/// Which sample a row belongs to.
-struct Owners {
-    default: String,
-    /// Index of the sample column; absent if there is none or no row names a sample.
-    column: Option<usize>,
-    width: usize,
-    /// Names in rows that have the right number of cells.
-    known: BTreeSet<String>,
-}
-
-impl Owners {
-    fn new(input: &str, header: &Header, rows: &[Record]) -> Self {
-        let width = header.names.len();
-        let column = header.index_of(Column::Sample);
-        let known: BTreeSet<String> = rows
-            .iter()
-            .filter(|row| row.cells.len() == width)
-            .filter_map(|row| row.cells.get(column?))
-            .map(|cell| clean_name(cell))
-            .filter(|name| !name.is_empty())
-            .collect();
-        let named = column.filter(|column| {
-            rows.iter().any(|row| {
-                row.cells
-                    .get(*column)
-                    .is_some_and(|cell| !cell.trim().is_empty())
-            })
-        });
-        Self {
-            default: default_name(input),
-            column: named,
-            width,
-            known,
-        }
-    }
-
-    /// The name of the sample, or `None` if it cannot be told.
-    fn of(&self, cells: &[String]) -> Option<String> {
-        let Some(column) = self.column else {
-            return Some(self.default.clone());
-        };
-        let name_at = |index: usize| {
-            cells
-                .get(index)
-                .map(|cell| clean_name(cell))
-                .filter(|name| !name.is_empty())
-        };
-        let from_left = name_at(column);
-        if cells.len() == self.width || column == 0 {
-            return from_left;
-        }
-        // Cells are missing or too many somewhere: counted from either end, one name must be that
-        // of a sample met in a sound row, and not two different ones.
-        let from_right = (column + cells.len())
-            .checked_sub(self.width)
-            .and_then(name_at);
-        let met: BTreeSet<String> = [from_left, from_right]
-            .into_iter()
-            .flatten()
-            .filter(|name| self.known.contains(name))
-            .collect();
-        if met.len() == 1 {
-            met.into_iter().next()
-        } else {
-            None
-        }
-    }
-}
-
-/// The file stem, or `stdin`.
-fn default_name(input: &str) -> String {
-    if input == "-" {
-        return "stdin".to_owned();
-    }
-    let stem = Path::new(input)
-        .file_stem()
-        .map(|stem| clean_name(&stem.to_string_lossy()));
-    stem.filter(|stem| !stem.is_empty())
-        .unwrap_or_else(|| escape_control(input))
 }
