@@ -1,10 +1,16 @@
 //! What is known: substances, their emitters, lines and band heads, each with
 //! its source. Loading checks everything; a loaded library is consistent.
 
+mod assemble;
+mod draft;
 mod load;
 mod names;
+mod priors;
+mod table;
 
 pub use load::{LibraryError, LibraryFault, embedded, extend_from, load_folder};
+pub use names::NameError;
+pub use priors::Selection;
 
 use crate::reduction::air::AirWavelength;
 use serde::{Deserialize, Serialize};
@@ -169,6 +175,8 @@ pub struct Excitation {
     pub complete_to_dex: f64,
     /// Remark for the reader.
     pub remark: String,
+    /// Index into [`Library::sources`] for the chance and the level.
+    pub source: usize,
 }
 
 /// An emitter (`Ca I`, `CaOH`) with its features.
