@@ -31,6 +31,10 @@ pub(super) fn assemble(
 ) -> Result<Library, Faults> {
     let mut faults = Vec::new();
     check_tables(tables, base.is_some(), &mut faults);
+    if !is_whole(tables, base.is_some()) {
+        // Everything else that could be said follows from the tables that are missing.
+        return Err(faults);
+    }
     let base = base.unwrap_or_else(empty);
     let table = |name: &str| tables.iter().find(|t| t.name == name);
 
@@ -110,29 +114,34 @@ fn check_tables(tables: &[TableFile<'_>], extends: bool, faults: &mut Faults) {
         let message = format!("is not a table of a library ({hint})");
         faults.push(LibraryFault::of_file(&table.name, &message));
     }
-    if extends {
-        if tables.is_empty() {
-            faults.push(LibraryFault::of_file(
-                "substances.csv",
-                "is missing, as is every other table",
-            ));
-        }
-        return;
-    }
     for name in NEEDED_ALONE {
-        if !tables.iter().any(|t| t.name == name) {
+        if !extends && !tables.iter().any(|t| t.name == name) {
             faults.push(LibraryFault::of_file(
                 name,
                 "is missing (a library that stands alone needs it)",
             ));
         }
     }
-    if !tables.iter().any(|t| t.name.starts_with("features/")) {
+    if !extends && !tables.iter().any(|t| t.name.starts_with("features/")) {
         faults.push(LibraryFault::of_file(
             "features/",
             "holds no table (a library that stands alone needs one for each substance)",
         ));
     }
+    if extends && tables.is_empty() {
+        faults.push(LibraryFault::of_file(
+            "substances.csv",
+            "is missing, as is every other table",
+        ));
+    }
+}
+
+/// True if every table a library cannot do without is there.
+fn is_whole(tables: &[TableFile<'_>], extends: bool) -> bool {
+    extends
+        || NEEDED_ALONE
+            .iter()
+            .all(|name| tables.iter().any(|t| t.name == *name))
 }
 
 /// Base rows whose key is not among the new ones, then the new ones.
@@ -169,7 +178,11 @@ fn merge_sources(
     let moved: Vec<usize> = (old.iter())
         .map(|known| all.partition_point(|s| s.key < known.key))
         .collect();
-    let follow = |index: &mut usize| *index = moved.get(*index).copied().unwrap_or(*index);
+    let follow = |indices: &mut Vec<usize>| {
+        for index in indices {
+            *index = moved.get(*index).copied().unwrap_or(*index);
+        }
+    };
     for emitter in base.substances.iter_mut().flat_map(|s| &mut s.emitters) {
         emitter
             .excitation

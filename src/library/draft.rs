@@ -227,7 +227,8 @@ pub(super) fn substances(
         if kind != SubstanceKind::Lamp {
             row.filled(symbol);
         }
-        for key in row.several(warn) {
+        let warnings = row.several(warn);
+        for key in &warnings {
             if !cautions.iter().any(|(known, _)| known == key) {
                 let known = cautions.iter().map(|(known, _)| known.as_str());
                 row.unresolved(warn, key, "a key of cautions.csv", known);
@@ -241,7 +242,7 @@ pub(super) fn substances(
             aliases: owned(row.several(aliases)),
             prior: [flame, discharge, absorption].map(|cell| row.word(cell, &PRIOR_CLASSES)),
             flame_colour: colour.text.to_owned(),
-            cautions: owned(row.several(warn)),
+            cautions: owned(warnings),
             note: note.text.to_owned(),
             emitters: Vec::new(),
         };
@@ -325,6 +326,12 @@ pub(super) fn emitters(
                 lines: [None; 3],
             });
         }
+        if !SOURCE_KINDS
+            .iter()
+            .any(|(word, _)| *word == source_kind.text)
+        {
+            return;
+        }
         let draft = &mut emitters[place];
         if draft.emitter.kind != kind {
             row.fault(
@@ -345,14 +352,22 @@ pub(super) fn emitters(
     });
 }
 
-fn resolve(row: &mut Row<'_>, cell: Cell<'_>, keys: &Keys, what: &str) -> usize {
+/// The indices of the keys in a cell that names one or more.
+fn resolve(row: &mut Row<'_>, cell: Cell<'_>, keys: &Keys, what: &str) -> Vec<usize> {
     if let Some(index) = keys.get(cell.text) {
-        return *index;
+        return vec![*index];
     }
-    if !row.filled(cell).is_empty() {
-        row.unresolved(cell, cell.text, what, keys.keys().map(String::as_str));
+    if row.filled(cell).is_empty() {
+        return Vec::new();
     }
-    0
+    let mut indices = Vec::new();
+    for key in row.several(cell) {
+        match keys.get(key) {
+            Some(index) => indices.push(*index),
+            None => row.unresolved(cell, key, what, keys.keys().map(String::as_str)),
+        }
+    }
+    indices
 }
 
 /// Reads `features/<substance>.csv` into the emitters of that substance.
@@ -362,11 +377,12 @@ pub(super) fn features(
     draft: &mut DraftSubstance,
     faults: &mut Faults,
 ) {
-    let mut previous_nm = 0.0;
+    let mut previous_nm = WAVELENGTH_NM.low;
     let known = format!("an emitter of {} in emitters.csv", draft.substance.id);
     read(table, &FEATURES, faults, |cells, row| {
         let [emitter, form, wavelength, ..] = cells;
-        let nm = row.number(wavelength, WAVELENGTH_NM);
+        // A wavelength that is no number says nothing of the order.
+        let nm = (row.sound_number(wavelength, WAVELENGTH_NM)).unwrap_or(previous_nm);
         if nm < previous_nm {
             row.fault(
                 wavelength,

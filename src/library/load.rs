@@ -233,3 +233,79 @@ pub(super) fn tiny() -> Library {
     let folder = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/cases/library/tiny");
     load_folder(&folder).unwrap_or_else(|error| panic!("{error}"))
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use proptest::prelude::*;
+
+    fn tiny_tables() -> Vec<TableFile<'static>> {
+        let folder = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/cases/library/tiny");
+        folder_tables(&folder).unwrap_or_else(|error| panic!("{error}"))
+    }
+
+    #[test]
+    fn the_digest_knows_names_contents_and_base() {
+        let tables = tiny_tables();
+        let whole = digest(None, &tables);
+        assert_eq!(whole, digest(None, &tiny_tables()));
+        assert_ne!(whole, digest(None, &tables[1..]));
+        assert_ne!(whole, digest(Some(&tiny()), &tables));
+        // printf 'a.csv\nx' | sha256sum
+        let one = TableFile {
+            name: "a.csv".to_owned(),
+            bytes: Cow::Borrowed(b"x"),
+        };
+        assert_eq!(
+            digest(None, &[one]),
+            "b6d5b4842ec507014268070145df5a4364436dc791a5115331e3a7db30abab48"
+        );
+    }
+
+    #[test]
+    fn a_long_list_of_faults_is_cut_when_shown() {
+        let faults = vec![LibraryFault::of_file("a.csv", "is odd"); 23];
+        let text = listed(&faults);
+        assert!(text.starts_with("23 faults\n  a.csv: is odd\n"), "{text}");
+        assert!(text.ends_with("\n  and 3 more"), "{text}");
+    }
+
+    proptest! {
+        #[test]
+        fn damaged_tables_are_refused_with_a_place_or_still_sound(
+            which in any::<prop::sample::Index>(),
+            from in any::<prop::sample::Index>(),
+            length in 0_usize..40,
+            put in prop_oneof![
+                proptest::collection::vec(any::<u8>(), 0..12),
+                "[0-9.,;\"\n#-]{0,12}".prop_map(String::into_bytes),
+            ],
+        ) {
+            let mut tables = tiny_tables();
+            let table = which.index(tables.len());
+            let bytes = tables[table].bytes.to_mut();
+            let from = from.index(bytes.len());
+            let to = (from + length).min(bytes.len());
+            bytes.splice(from..to, put);
+            let lines = bytes.iter().filter(|b| matches!(b, b'\n' | b'\r')).count() + 1;
+            let name = tables[table].name.clone();
+            match assemble(None, &tables, String::new()) {
+                Ok(library) => {
+                    prop_assert!(library.substances.is_sorted_by(|a, b| a.id < b.id));
+                    for feature in library.substances.iter().flat_map(|s| &s.emitters).flat_map(|e| &e.features) {
+                        prop_assert!(feature.strength_dex.iter().flatten().all(|m| *m <= 0.0));
+                        prop_assert!(feature.uncertainty_nm > 0.0);
+                        prop_assert!(feature.source_position.iter().all(|i| *i < library.sources.len()));
+                    }
+                }
+                Err(faults) => {
+                    prop_assert!(!faults.is_empty());
+                    for fault in faults {
+                        prop_assert!(!fault.message.is_empty());
+                        prop_assert!(fault.file != name || fault.row.is_none_or(|row| row <= lines));
+                    }
+                }
+            }
+        }
+    }
+}

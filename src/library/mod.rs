@@ -152,10 +152,11 @@ pub struct Feature {
     pub lower_level_per_cm: Option<f64>,
     /// Upper level, cm⁻¹, if known.
     pub upper_level_per_cm: Option<f64>,
-    /// Index into [`Library::sources`] for the position.
-    pub source_position: usize,
-    /// Index into [`Library::sources`] for the strengths.
-    pub source_strength: usize,
+    /// Indices into [`Library::sources`] for the position.
+    pub source_position: Vec<usize>,
+    /// Indices into [`Library::sources`] for the strengths: values first, then the rules that
+    /// made strengths of them.
+    pub source_strength: Vec<usize>,
     /// Remarks.
     pub note: String,
     /// Row in its table (line of the file).
@@ -175,8 +176,8 @@ pub struct Excitation {
     pub complete_to_dex: f64,
     /// Remark for the reader.
     pub remark: String,
-    /// Index into [`Library::sources`] for the chance and the level.
-    pub source: usize,
+    /// Indices into [`Library::sources`] for the chance and the level.
+    pub source: Vec<usize>,
 }
 
 /// An emitter (`Ca I`, `CaOH`) with its features.

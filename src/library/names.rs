@@ -61,8 +61,12 @@ pub(super) fn closest<'k>(
     let mut near: Vec<(usize, &str)> = known
         .filter_map(|name| {
             let other = folded(name);
+            let other_length = other.chars().count();
+            let room = length.min(other_length) / 3;
+            if other_length + room < length {
+                return None;
+            }
             let distance = strsim::damerau_levenshtein(&wanted, &other);
-            let room = length.min(other.chars().count()) / 3;
             (distance <= room || other.starts_with(&wanted)).then_some((distance, name))
         })
         .collect();

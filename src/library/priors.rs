@@ -122,3 +122,102 @@ fn prior_of(substance: &Substance, source: SourceKind, rare: f64) -> f64 {
         PriorClass::Rare | PriorClass::Never => rare.min(CAP),
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::super::load::tiny;
+    use super::*;
+
+    fn named(library: &Library, source: SourceKind, id: &str) -> f64 {
+        library.prior(source, library.find(id).unwrap_or(usize::MAX))
+    }
+
+    /// The tiny library with every element `copies` times over.
+    fn larger(copies: usize) -> Library {
+        let mut library = tiny();
+        let own = library.substances.clone();
+        for k in 1..copies {
+            library.substances.extend(own.iter().cloned().map(|mut s| {
+                s.id = format!("{}-{k}", s.id);
+                s
+            }));
+        }
+        library.substances.sort_by(|a, b| a.id.cmp(&b.id));
+        library
+    }
+
+    #[test]
+    fn classes_have_the_priors_of_the_model() {
+        let library = tiny();
+        assert_eq!(named(&library, SourceKind::Flame, "sodium"), 0.5);
+        assert_eq!(named(&library, SourceKind::Flame, "room-light"), 0.3);
+        // One usual and one rare substance: 1.5 · 5/6 is capped, 1.5/6 is not, nor is it raised.
+        assert_eq!(named(&library, SourceKind::Flame, "strontium"), 0.3);
+        assert_eq!(named(&library, SourceKind::Flame, "cobalt"), 0.25);
+        assert_eq!(library.prior(SourceKind::Flame, 99), 0.0);
+    }
+
+    #[test]
+    fn usual_and_rare_sum_to_the_expected_number_where_nothing_is_capped() {
+        let library = larger(8);
+        for (source, expected) in [(SourceKind::Flame, 1.5), (SourceKind::Discharge, 2.5)] {
+            let scaled = library.substances.iter().enumerate().filter(|(_, s)| {
+                let class = s.prior[source.index()];
+                is_met(s, source) && matches!(class, PriorClass::Usual | PriorClass::Rare)
+            });
+            let sum: f64 = scaled.map(|(index, _)| library.prior(source, index)).sum();
+            assert!((sum - expected).abs() < 1e-12, "{source:?}: {sum}");
+        }
+        let usual = named(&library, SourceKind::Flame, "strontium-3");
+        let rare = named(&library, SourceKind::Flame, "cobalt-5");
+        assert!((usual / rare - 5.0).abs() < 1e-12, "{usual} {rare}");
+    }
+
+    #[test]
+    fn a_substance_without_emitters_here_takes_no_share() {
+        let mut library = larger(8);
+        let before = named(&library, SourceKind::Flame, "cobalt");
+        let mut ghost = library.substances[0].clone();
+        ghost.id = "zz-ghost".into();
+        ghost.prior = [PriorClass::Usual; 3];
+        ghost.emitters.clear();
+        library.substances.push(ghost);
+        assert_eq!(named(&library, SourceKind::Flame, "cobalt"), before);
+    }
+
+    #[test]
+    fn everything_leaves_out_what_is_never_met_and_a_list_only_restricts() {
+        let library = larger(8);
+        let source = SourceKind::Flame;
+        let index = |id: &str| library.find(id).expect("known");
+        let all = library.candidate_priors(source, &Selection::Everything, &[]);
+        assert!(all.is_sorted_by(|a, b| a.0 < b.0));
+        assert!(all.iter().all(|(i, p)| *p == library.prior(source, *i)));
+        assert!(!all.iter().any(|(i, _)| *i == index("carbon-monoxide")));
+
+        let listed = library
+            .select_named(&["carbon-monoxide", "strontium"])
+            .expect("known");
+        let few = library.candidate_priors(source, &listed, &[]);
+        let rare = named(&library, source, "cobalt");
+        assert_eq!(
+            few,
+            [
+                (index("carbon-monoxide"), rare),
+                (index("strontium"), 5.0 * rare)
+            ]
+        );
+    }
+
+    #[test]
+    fn always_adds_one_half() {
+        let library = larger(8);
+        let cobalt = library.find("cobalt").expect("known");
+        let listed = library.select_list("lamps").expect("known");
+        let few = library.candidate_priors(SourceKind::Flame, &listed, &[cobalt]);
+        assert_eq!(
+            few,
+            [(cobalt, 0.5), (library.find("sodium").expect("known"), 0.5)]
+        );
+    }
+}

@@ -46,7 +46,7 @@ pub(super) struct Cell<'a> {
 /// The values a number may have.
 #[derive(Clone, Copy)]
 pub(super) struct Bounds {
-    low: f64,
+    pub(super) low: f64,
     low_included: bool,
     high: f64,
 }
@@ -116,14 +116,18 @@ impl Row<'_> {
 
     /// A number that must be there.
     pub(super) fn number(&mut self, cell: Cell<'_>, bounds: Bounds) -> f64 {
-        if cell.text.is_empty() {
-            self.fault(cell, "is empty (a number is needed here)");
-            return bounds.high;
-        }
-        self.number_if_any(cell, bounds).unwrap_or(bounds.high)
+        self.sound_number(cell, bounds).unwrap_or(bounds.high)
     }
 
-    /// A number, or nothing where the cell is empty.
+    /// A number that must be there; `None` after a fault.
+    pub(super) fn sound_number(&mut self, cell: Cell<'_>, bounds: Bounds) -> Option<f64> {
+        if cell.text.is_empty() {
+            self.fault(cell, "is empty (a number is needed here)");
+        }
+        self.number_if_any(cell, bounds)
+    }
+
+    /// A number, or `None` where the cell is empty and after a fault.
     pub(super) fn number_if_any(&mut self, cell: Cell<'_>, bounds: Bounds) -> Option<f64> {
         if cell.text.is_empty() {
             return None;
@@ -134,7 +138,7 @@ impl Row<'_> {
             Ok(_) => self.fault(cell, format!("is out of range (must be {bounds})")),
             Err(_) => self.fault(cell, not_a_number(cell.text)),
         }
-        Some(bounds.high)
+        None
     }
 
     /// One of a few words, written exactly.
@@ -146,20 +150,26 @@ impl Row<'_> {
         if let Some((_, value)) = words.iter().find(|(word, _)| *word == cell.text) {
             return *value;
         }
-        let known: Vec<&str> = words.iter().map(|(word, _)| *word).collect();
-        self.fault(cell, format!("is not one of {}", known.join(", ")));
+        let known = words.iter().map(|(word, _)| *word);
+        let (empty, known): (Vec<&str>, Vec<&str>) = known.partition(|word| word.is_empty());
+        let or_empty = if empty.is_empty() { "" } else { " (or empty)" };
+        self.fault(
+            cell,
+            format!("is not one of {}{or_empty}", known.join(", ")),
+        );
         const { assert!(K > 0, "a choice of words has at least one") };
         words[0].1
     }
 
     /// The values of a cell that may hold several, separated by `;`.
     pub(super) fn several<'c>(&mut self, cell: Cell<'c>) -> Vec<&'c str> {
-        let values: Vec<&str> = cell.text.split(';').map(str::trim).collect();
-        if values == [""] {
+        if cell.text.is_empty() {
             return Vec::new();
         }
+        let mut values: Vec<&str> = cell.text.split(';').map(str::trim).collect();
         if values.contains(&"") {
             self.fault(cell, "has an empty value between semicolons");
+            values.retain(|value| !value.is_empty());
         }
         values
     }
