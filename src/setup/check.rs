@@ -10,42 +10,36 @@ const WIDEST_NM: f64 = 100.0;
 /// More decades than any instrument here spans.
 const MOST_DECADES: f64 = 9.0;
 
+/// What a number must be.
+type Rule = fn(f64) -> Result<(), String>;
+
 /// Checks each value by itself: (key as the file spells it, what is wrong).
 pub(super) fn check_values(said: &SetupOverrides) -> Vec<(&'static str, String)> {
-    let no = |value: Option<f64>, rule: fn(f64) -> Result<(), String>| value.map_or(Ok(()), rule);
-    let checks = [
-        ("instrument.range_nm", said.range_nm.map_or(Ok(()), stretch)),
-        ("instrument.resolution_nm", no(said.resolution_nm, width)),
-        ("instrument.uncertainty_nm", no(said.uncertainty_nm, width)),
-        ("instrument.offset_nm", no(said.offset_nm, width_or_zero)),
+    let numbers: [(&str, Option<f64>, Rule); 8] = [
+        ("instrument.resolution_nm", said.resolution_nm, width),
+        ("instrument.uncertainty_nm", said.uncertainty_nm, width),
+        ("instrument.offset_nm", said.offset_nm, width_or_zero),
         (
             "instrument.scale_relative",
-            no(said.scale_relative, small_share),
+            said.scale_relative,
+            small_share,
         ),
-        (
-            "instrument.dynamic_range",
-            no(said.dynamic_range_dex, decades),
-        ),
+        ("instrument.dynamic_range", said.dynamic_range_dex, decades),
         (
             "instrument.strength_uncertainty_dex",
-            no(said.strength_uncertainty_dex, decades),
+            said.strength_uncertainty_dex,
+            decades,
         ),
-        ("instrument.division_nm", no(said.division_nm, width)),
-        ("instrument.faintest", no(said.faintest, positive)),
-        (
-            "instrument.blind_nm",
-            said.blind_nm
-                .iter()
-                .flatten()
-                .try_for_each(|pair| stretch(*pair)),
-        ),
-        (
-            "instrument.dim_nm",
-            said.dim_nm
-                .iter()
-                .flatten()
-                .try_for_each(|dim| dimmed(*dim)),
-        ),
+        ("instrument.division_nm", said.division_nm, width),
+        ("instrument.faintest", said.faintest, positive),
+    ];
+    let numbers = numbers.map(|(key, value, rule)| (key, value.map_or(Ok(()), rule)));
+    let mut blind = said.blind_nm.iter().flatten().copied();
+    let mut dim = said.dim_nm.iter().flatten().copied();
+    let others = [
+        ("instrument.range_nm", said.range_nm.map_or(Ok(()), stretch)),
+        ("instrument.blind_nm", blind.try_for_each(stretch)),
+        ("instrument.dim_nm", dim.try_for_each(dimmed)),
         (
             "instrument.filter",
             said.filter.as_deref().map_or(Ok(()), filter),
@@ -63,8 +57,8 @@ pub(super) fn check_values(said: &SetupOverrides) -> Vec<(&'static str, String)>
             said.candidates.as_ref().map_or(Ok(()), candidates),
         ),
     ];
+    let checks = numbers.into_iter().chain(others);
     checks
-        .into_iter()
         .filter_map(|(key, check)| Some((key, check.err()?)))
         .collect()
 }

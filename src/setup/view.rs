@@ -118,159 +118,175 @@ impl Setup {
         }
     }
 
-    /// The values used, in the order of a set-up file: (key, value with its unit).
-    /// Keys without a value are left out.
+    /// The values used, in the order of a set-up file: (name, value with its unit).
+    /// What has no value is left out.
     pub fn describe(&self) -> Vec<(String, String)> {
         let view = self.view();
-        let nm = |value: f64| format!("{value} nm");
-        let stretch = |[from, to]: [f64; 2]| format!("{from} to {to} nm");
-        let stretches = |list: &[[f64; 2]]| {
-            list.iter()
-                .map(|s| stretch(*s))
-                .collect::<Vec<_>>()
-                .join(", ")
-        };
-        let dims = view
-            .dim
-            .iter()
-            .map(|d| format!("{} to {} nm: {} decades", d.from_nm, d.to_nm, d.lost_dex));
-        let shift = format!(
-            "{} nm (taken as {} nm)",
-            view.offset_nm, view.common_shift_nm
-        );
-        let range = match view.range_nm == view.seen_range_nm {
-            true => stretch(view.range_nm),
-            false => format!(
-                "{} (the eye sees {})",
-                stretch(view.range_nm),
-                stretch(view.seen_range_nm)
-            ),
-        };
-        let rows = [
-            ("instrument", Some(view.instrument.to_owned())),
-            ("range", Some(range)),
-            ("blind", some(stretches(&view.blind_nm))),
-            ("resolution", Some(nm(view.resolution_nm))),
-            ("uncertainty", Some(nm(view.uncertainty_nm))),
-            ("division", view.division_nm.map(nm)),
-            ("offset", Some(shift)),
-            ("scale", Some(format!("{} relative", view.scale_relative))),
-            (
-                "dynamic range",
-                Some(format!("{} decades", view.dynamic_range_dex)),
-            ),
-            (
-                "strength uncertainty",
-                Some(format!("{} decades", view.strength_uncertainty_dex)),
-            ),
-            (
-                "faintest",
-                view.faintest
-                    .map(|faintest| format!("{faintest} on the scale of the table")),
-            ),
-            (
-                "listed at most",
-                view.listed_at_most.map(|count| format!("{count} readings")),
-            ),
-            ("medium", Some(view.medium.to_owned())),
-            ("response", Some(view.response.clone())),
-            ("filter", view.filter.map(str::to_owned)),
-            ("dimmed", some(dims.collect::<Vec<_>>().join(", "))),
-            (
-                "orders filtered",
-                Some(if view.orders_filtered { "yes" } else { "no" }.to_owned()),
-            ),
-            ("source", Some(view.source.to_owned())),
-            ("always", some(view.always.join(", "))),
-            (
-                "candidates",
-                Some(match view.candidates {
-                    CandidatesView::Text(text) => text,
-                    CandidatesView::Names(names) => names.join(", "),
-                }),
-            ),
-            ("library", view.library),
-        ];
-        rows.into_iter()
-            .filter_map(|(key, value)| Some((key.to_owned(), value?)))
+        let rows = view
+            .optics()
+            .into_iter()
+            .chain(view.strengths())
+            .chain(view.surroundings());
+        rows.filter_map(|(name, value)| Some((name.to_owned(), value?)))
             .collect()
     }
 
-    /// The set-up as a set-up file that reads back to the same set-up.
+    /// The set-up as a set-up file that reads back to the same set-up from the working folder.
     pub fn to_toml(&self) -> String {
-        let view = self.view();
-        let list = |names: &[String]| {
-            names
-                .iter()
-                .map(|name| quoted(name))
-                .collect::<Vec<_>>()
-                .join(", ")
-        };
-        let dims: Vec<[f64; 3]> = self
-            .dim_nm
-            .iter()
-            .map(|&(from, to, lost)| [from, to, lost])
-            .collect();
-        let instrument = [
-            ("kind", Some(quoted(view.instrument))),
-            ("range_nm", Some(format!("{:?}", view.range_nm))),
-            ("resolution_nm", Some(format!("{:?}", view.resolution_nm))),
-            ("uncertainty_nm", Some(format!("{:?}", view.uncertainty_nm))),
-            ("offset_nm", Some(format!("{:?}", view.offset_nm))),
-            ("scale_relative", Some(format!("{:?}", view.scale_relative))),
-            (
-                "dynamic_range",
-                Some(format!("{:?}", view.dynamic_range_dex)),
-            ),
+        let instrument = lines(self.instrument_keys());
+        let source = lines(self.source_keys());
+        format!("[instrument]\n{instrument}\n[source]\n{source}")
+    }
+
+    /// The keys of `[instrument]` with their values in TOML.
+    fn instrument_keys(&self) -> Vec<Row> {
+        let number = |value: f64| format!("{value:?}");
+        let dims = self.dim_nm.iter().map(|&(from, to, lost)| [from, to, lost]);
+        let dims: Vec<[f64; 3]> = dims.collect();
+        vec![
+            ("kind", Some(quoted(self.instrument.name()))),
+            ("range_nm", Some(format!("{:?}", self.range_nm))),
+            ("resolution_nm", Some(number(self.resolution_nm))),
+            ("uncertainty_nm", Some(number(self.uncertainty_nm))),
+            ("offset_nm", Some(number(self.offset_nm))),
+            ("scale_relative", Some(number(self.scale_relative))),
+            ("dynamic_range", Some(number(self.dynamic_range_dex))),
             (
                 "strength_uncertainty_dex",
-                Some(format!("{:?}", view.strength_uncertainty_dex)),
+                Some(number(self.strength_uncertainty_dex)),
             ),
-            ("medium", Some(quoted(view.medium))),
-            ("division_nm", view.division_nm.map(|nm| format!("{nm:?}"))),
+            ("medium", Some(quoted(self.medium.name()))),
+            ("division_nm", self.division_nm.map(number)),
             (
                 "blind_nm",
-                Some(format!("{:?}", self.blind_nm)).filter(|_| !self.blind_nm.is_empty()),
+                (!self.blind_nm.is_empty()).then(|| format!("{:?}", self.blind_nm)),
             ),
-            ("filter", view.filter.map(quoted)),
-            (
-                "dim_nm",
-                Some(format!("{dims:?}")).filter(|_| !dims.is_empty()),
-            ),
-            ("orders_filtered", Some(view.orders_filtered.to_string())),
-            (
-                "faintest",
-                view.faintest.map(|faintest| format!("{faintest:?}")),
-            ),
+            ("filter", self.filter.map(|filter| quoted(filter.name))),
+            ("dim_nm", (!dims.is_empty()).then(|| format!("{dims:?}"))),
+            ("orders_filtered", Some(self.orders_filtered.to_string())),
+            ("faintest", self.faintest.map(number)),
             (
                 "listed_at_most",
-                view.listed_at_most.map(|count| count.to_string()),
+                self.listed_at_most.map(|count| count.to_string()),
             ),
-            ("response", Some(quoted(&view.response))),
-        ];
-        let source = [
-            ("kind", Some(quoted(view.source))),
-            ("always", Some(format!("[{}]", list(&view.always)))),
+            ("response", Some(quoted(&self.response.name))),
+        ]
+    }
+
+    /// The keys of `[source]` with their values in TOML.
+    fn source_keys(&self) -> Vec<Row> {
+        let list = |names: &[String]| {
+            let names: Vec<String> = names.iter().map(|name| quoted(name)).collect();
+            format!("[{}]", names.join(", "))
+        };
+        let candidates = match &self.candidates {
+            Candidates::Everything => quoted("everything"),
+            Candidates::List(name) => quoted(name),
+            Candidates::Named(names) => list(names),
+        };
+        vec![
+            ("kind", Some(quoted(source_name(self.source)))),
+            ("always", Some(list(&self.always))),
+            ("candidates", Some(candidates)),
             (
-                "candidates",
-                Some(match &view.candidates {
-                    CandidatesView::Text(text) => quoted(text),
-                    CandidatesView::Names(names) => format!("[{}]", list(names)),
-                }),
+                "library",
+                self.library
+                    .as_ref()
+                    .map(|path| quoted(&path.display().to_string())),
             ),
-            ("library", view.library.as_deref().map(quoted)),
-        ];
-        format!(
-            "[instrument]\n{}\n[source]\n{}",
-            lines(&instrument),
-            lines(&source)
-        )
+        ]
     }
 }
 
-/// A text unless it is empty.
-fn some(text: String) -> Option<String> {
-    Some(text).filter(|text| !text.is_empty())
+/// A name and a value, if there is one.
+type Row = (&'static str, Option<String>);
+
+impl SetupView {
+    /// Everything on the wavelength scale.
+    fn optics(&self) -> Vec<Row> {
+        let nm = |value: f64| format!("{value} nm");
+        let stretch = |[from, to]: [f64; 2]| format!("{from} to {to} nm");
+        let blind: Vec<String> = self.blind_nm.iter().copied().map(stretch).collect();
+        let range = match self.range_nm == self.seen_range_nm {
+            true => stretch(self.range_nm),
+            false => {
+                let (stated, seen) = (stretch(self.range_nm), stretch(self.seen_range_nm));
+                format!("{stated} (the eye sees {seen})")
+            }
+        };
+        let shift = format!(
+            "{} nm (taken as {} nm)",
+            self.offset_nm, self.common_shift_nm
+        );
+        vec![
+            ("instrument", Some(self.instrument.to_owned())),
+            ("range", Some(range)),
+            ("blind", unless_empty(blind.join(", "))),
+            ("resolution", Some(nm(self.resolution_nm))),
+            ("uncertainty", Some(nm(self.uncertainty_nm))),
+            ("division", self.division_nm.map(nm)),
+            ("offset", Some(shift)),
+            ("scale", Some(format!("{} relative", self.scale_relative))),
+            ("medium", Some(self.medium.to_owned())),
+        ]
+    }
+
+    /// Everything on the scale of strengths.
+    fn strengths(&self) -> Vec<Row> {
+        let decades = |value: f64| format!("{value} decades");
+        let dimmed = |dim: &DimView| {
+            format!(
+                "{} to {} nm by {}",
+                dim.from_nm,
+                dim.to_nm,
+                decades(dim.lost_dex)
+            )
+        };
+        let dims: Vec<String> = self.dim.iter().map(dimmed).collect();
+        let faintest = self
+            .faintest
+            .map(|number| format!("{number} on the scale of the table"));
+        vec![
+            ("dynamic range", Some(decades(self.dynamic_range_dex))),
+            (
+                "strength uncertainty",
+                Some(decades(self.strength_uncertainty_dex)),
+            ),
+            ("faintest", faintest),
+            (
+                "listed at most",
+                self.listed_at_most.map(|count| format!("{count} readings")),
+            ),
+            ("response", Some(self.response.clone())),
+            ("filter", self.filter.map(str::to_owned)),
+            ("dimmed", unless_empty(dims.join(", "))),
+        ]
+    }
+
+    /// Orders, source and what is weighed.
+    fn surroundings(&self) -> Vec<Row> {
+        let orders = if self.orders_filtered {
+            "filtered"
+        } else {
+            "can overlap"
+        };
+        let candidates = match &self.candidates {
+            CandidatesView::Text(text) => text.clone(),
+            CandidatesView::Names(names) => names.join(", "),
+        };
+        vec![
+            ("orders", Some(orders.to_owned())),
+            ("source", Some(self.source.to_owned())),
+            ("always", unless_empty(self.always.join(", "))),
+            ("candidates", Some(candidates)),
+            ("library", self.library.clone()),
+        ]
+    }
+}
+
+/// A text, if there is something in it.
+fn unless_empty(text: String) -> Option<String> {
+    (!text.is_empty()).then_some(text)
 }
 
 /// A product of two short decimals without the dust of binary fractions.
@@ -284,10 +300,10 @@ fn quoted(text: &str) -> String {
 }
 
 /// One `key = value` a line.
-fn lines(rows: &[(&str, Option<String>)]) -> String {
+fn lines(rows: Vec<Row>) -> String {
     let stated = rows
-        .iter()
-        .filter_map(|(key, value)| Some((key, value.as_ref()?)));
+        .into_iter()
+        .filter_map(|(key, value)| Some((key, value?)));
     stated
         .map(|(key, value)| format!("{key} = {value}\n"))
         .collect()
