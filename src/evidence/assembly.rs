@@ -2,7 +2,7 @@
 //! have to be assigned together.
 
 use super::blend::{Part, absorb, blend};
-use super::matching::{LANES, Lanes, Plan, Scratch, ln_matchings};
+use super::matching::{LANES, Lanes, Matching};
 use super::prepare::{Prepared, Scene};
 
 /// What all compositions of one inference are built from.
@@ -78,7 +78,6 @@ pub struct Segment {
     pub members: Vec<usize>,
     /// (member, emitter) with a line here.
     pub emitters: Vec<(usize, usize)>,
-    plan: Plan,
 }
 
 /// A composition laid out for evaluation.
@@ -112,14 +111,12 @@ pub struct Realised {
 /// Working memory for one thread.
 #[derive(Debug, Default, Clone)]
 pub struct Workspace {
-    scratch: Scratch,
+    matching: Matching,
     lines: Vec<Realised>,
-    block_ends: Vec<usize>,
     /// Local reading of each pair.
     reading: Vec<usize>,
     /// r of pair q at shift d: `r[d * pairs + q]`.
     r: Vec<f64>,
-    row: Vec<(usize, f64)>,
 }
 
 impl Assembly {
@@ -198,7 +195,6 @@ impl Assembly {
     /// Computes the lines of a segment as they look in one latent state, and all r.
     fn realise(&self, stock: &Stock, segment: &Segment, latents: &[Latent], shifts: &[usize], work: &mut Workspace) -> f64 {
         work.lines.clear();
-        work.block_ends.clear();
         work.reading.clear();
         // Chains append their positions shift by shift; singles look theirs up: both go through
         // `columns` (pair-major) and are transposed at the end.
@@ -215,7 +211,6 @@ impl Assembly {
                         self.realise_chain(stock, segment, parts, reach, *width_nm, latents, shifts, work, &mut columns);
                 }
             }
-            work.block_ends.push(work.lines.len());
         }
         work.r = columns;
         ln_missing
@@ -283,6 +278,7 @@ impl Assembly {
             })
             .collect();
         let mut ln_missing = 0.0;
+        let first = work.lines.len();
         for group in absorb(&shapes, width_nm) {
             let chosen: Vec<Part> = group.iter().map(|i| shapes[*i]).collect();
             let (whole, weights) = blend(&chosen);
@@ -307,6 +303,7 @@ impl Assembly {
                 pairs: start..work.reading.len(),
             });
         }
+        work.lines[first..].sort_by(|a, b| a.wavelength_nm.total_cmp(&b.wavelength_nm));
         ln_missing
     }
 
@@ -352,35 +349,24 @@ fn sum_at(
     is_barred: &dyn Fn(usize) -> bool,
     skip: Option<usize>,
 ) -> Lanes {
-    let Workspace { scratch, lines, block_ends, reading, r, row } = work;
+    let Workspace { matching, lines, reading, r } = work;
     if reading.is_empty() {
         return [0.0; LANES];
     }
     let stride = r.len() / reading.len();
     // A blend is caused by the member that holds most of it.
-    let free = |line: &Realised| !is_barred(line.owner.0);
+    let free = |line: &&Realised| !is_barred(line.owner.0);
+    let gate = 0.01 * stock.scene.settings.gate;
     let r_of = |q: usize| if skip == Some(reading[q]) { 0.0 } else { r[q * stride + d] };
     if segment.readings.len() == 1 || lines.len() == 1 {
-        let sum: f64 = lines
-            .iter()
-            .filter(|l| free(l))
-            .flat_map(|l| l.pairs.clone())
-            .map(r_of)
-            .sum();
+        let sum: f64 = lines.iter().filter(free).flat_map(|l| l.pairs.clone()).map(r_of).sum();
         return std::array::from_fn(|l| (sum * stock.lane_scale[l]).ln_1p());
     }
-    ln_matchings(&segment.plan, &stock.lane_scale, scratch, |block, add| {
-        let first = if block == 0 { 0 } else { block_ends[block - 1] };
-        for line in &lines[first..block_ends[block]] {
-            if free(line) {
-                row.clear();
-                row.extend(line.pairs.clone().map(|q| (reading[q], r_of(q))).filter(|(_, r)| *r > 1e-7));
-                if !row.is_empty() {
-                    add(row);
-                }
-            }
-        }
-    })
+    matching.clear();
+    for line in lines.iter().filter(free) {
+        matching.push(line.pairs.clone().map(|q| (reading[q], r_of(q))).filter(|(_, r)| *r > gate));
+    }
+    matching.ln_sum(&stock.lane_scale)
 }
 
 /// The member that holds the largest share of a blend, with its strongest line there.
@@ -527,49 +513,5 @@ fn segment(stock: &Stock, members: &[usize], parts: Vec<(Block, Vec<usize>)>) ->
     owners.dedup();
     let mut present: Vec<usize> = owners.iter().map(|(m, _)| *m).collect();
     present.dedup();
-    let plan = fitting_plan(stock, members, &mut blocks, &readings);
-    Segment { blocks, readings, members: present, emitters: owners, plan }
-}
-
-/// A plan whose frontier fits; where readings crowd beyond that, every block keeps only the
-/// readings nearest to it, as many as fit.
-fn fitting_plan(stock: &Stock, members: &[usize], blocks: &mut [Block], readings: &[usize]) -> Plan {
-    let mut keep = usize::MAX;
-    loop {
-        let reach: Vec<Vec<usize>> = blocks
-            .iter()
-            .map(|b| match b {
-                Block::Single { pairs, .. } => pairs.iter().map(|(_, j)| *j).collect(),
-                Block::Chain { reach, .. } => reach.clone(),
-            })
-            .collect();
-        match Plan::new(&reach, readings.len()) {
-            Ok(plan) => return plan,
-            Err(_) => {
-                keep = if keep == usize::MAX { 10 } else { keep.saturating_sub(1) };
-                for block in blocks.iter_mut() {
-                    keep_nearest(stock, members, block, readings, keep);
-                }
-            }
-        }
-    }
-}
-
-fn keep_nearest(stock: &Stock, members: &[usize], block: &mut Block, readings: &[usize], keep: usize) {
-    let position = |local: usize| stock.scene.observations[readings[local]].wavelength_nm;
-    let at = |m: usize, line: usize| stock.prepared[members[m]].lines[line].wavelength_nm;
-    match block {
-        Block::Single { member, line, pairs } => {
-            let centre = at(*member, *line);
-            pairs.sort_by(|a, b| (position(a.1) - centre).abs().total_cmp(&(position(b.1) - centre).abs()));
-            pairs.truncate(keep);
-            pairs.sort_unstable();
-        }
-        Block::Chain { parts, reach, .. } => {
-            let centre = parts.iter().map(|(m, line)| at(*m, *line)).sum::<f64>() / parts.len() as f64;
-            reach.sort_by(|a, b| (position(*a) - centre).abs().total_cmp(&(position(*b) - centre).abs()));
-            reach.truncate(keep);
-            reach.sort_unstable();
-        }
-    }
+    Segment { blocks, readings, members: present, emitters: owners }
 }

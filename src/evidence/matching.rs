@@ -2,7 +2,7 @@
 //!
 //! Each feature causes at most one reading and each reading has one cause. Features are taken in
 //! order; a frontier holds the readings that earlier features may have taken and later ones may
-//! still reach. A reading is retired after its last feature.
+//! still reach, a bit each. A reading is retired after its last feature.
 
 /// Lanes: one per node of the clutter rate.
 pub const LANES: usize = 4;
@@ -10,152 +10,128 @@ pub const LANES: usize = 4;
 /// A value per clutter node.
 pub type Lanes = [f64; LANES];
 
-/// At most this many readings in the frontier: 2^12 states.
+/// At most this many readings in the frontier: 2^12 states. Where more crowd within reach of one
+/// another, a feature cannot take those that find no place.
 const FRONTIER: usize = 12;
 
-/// The order of entering and retiring readings, fixed by which features can reach which readings.
-#[derive(Debug, Clone)]
-pub struct Plan {
-    steps: Vec<Step>,
-    slots: usize,
-    readings: usize,
-}
-
-#[derive(Debug, Clone, Default)]
-struct Step {
-    /// (local reading, slot) that enter before the block.
-    enter: Vec<(usize, usize)>,
-    /// Slots that retire after it.
-    retire: Vec<usize>,
-}
-
-impl Plan {
-    /// `reach[b]` lists the local readings that block b of features can reach. Readings beyond
-    /// what the frontier can hold are refused: gives the blocks and readings that overflow.
-    pub fn new(reach: &[Vec<usize>], readings: usize) -> Result<Self, Overflow> {
-        let mut first = vec![usize::MAX; readings];
-        let mut last = vec![0; readings];
-        for (block, reached) in reach.iter().enumerate() {
-            for j in reached {
-                first[*j] = first[*j].min(block);
-                last[*j] = block;
-            }
-        }
-        let mut free: Vec<usize> = (0..FRONTIER).rev().collect();
-        let mut slot_of = vec![usize::MAX; readings];
-        let mut slots = 0;
-        let mut steps = vec![Step::default(); reach.len()];
-        for (block, step) in steps.iter_mut().enumerate() {
-            for j in 0..readings {
-                if first[j] == block {
-                    let Some(slot) = free.pop() else {
-                        return Err(Overflow { block });
-                    };
-                    slot_of[j] = slot;
-                    slots = slots.max(slot + 1);
-                    step.enter.push((j, slot));
-                }
-            }
-            for j in 0..readings {
-                if first[j] != usize::MAX && last[j] == block {
-                    step.retire.push(slot_of[j]);
-                    free.push(slot_of[j]);
-                    free.sort_unstable_by(|a, b| b.cmp(a));
-                }
-            }
-        }
-        Ok(Self { steps, slots, readings })
-    }
-}
-
-/// Too many readings within reach of one block of features.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub struct Overflow {
-    /// The block.
-    pub block: usize,
-}
-
-/// Working memory, reused from call to call.
+/// Features with the readings they may have caused, and working memory for the sum.
 #[derive(Debug, Default, Clone)]
-pub struct Scratch {
+pub struct Matching {
+    /// (reading, r at κ_ref), feature after feature.
+    pairs: Vec<(usize, f64)>,
+    /// End of each feature in `pairs`.
+    ends: Vec<usize>,
+    /// Last feature that reaches each reading.
+    last: Vec<usize>,
+    /// Frontier: the reading of each bit.
+    active: Vec<usize>,
     states: Vec<Lanes>,
-    slot_of: Vec<usize>,
+    row: Vec<(usize, f64)>,
 }
 
-/// One feature: (local reading, r at κ_ref) for every reading it may have caused.
-pub type Row<'a> = &'a [(usize, f64)];
-
-/// ln Σ over matchings Π r, per lane; `scale[l]` = κ_ref/κ_l multiplies every r in lane l.
-///
-/// `rows_of` hands over the features of one block of the plan, one by one.
-pub fn ln_matchings(
-    plan: &Plan,
-    scale: &Lanes,
-    scratch: &mut Scratch,
-    mut rows_of: impl FnMut(usize, &mut dyn FnMut(Row)),
-) -> Lanes {
-    let mut ln_scale = [0.0; LANES];
-    scratch.states.clear();
-    scratch.states.resize(1 << plan.slots, [0.0; LANES]);
-    scratch.states[0] = [1.0; LANES];
-    scratch.slot_of.clear();
-    scratch.slot_of.resize(plan.readings, usize::MAX);
-    for (block, step) in plan.steps.iter().enumerate() {
-        for (reading, slot) in &step.enter {
-            scratch.slot_of[*reading] = *slot;
-        }
-        let Scratch { states, slot_of } = scratch;
-        rows_of(block, &mut |row| add_feature(states, slot_of, row, scale));
-        for slot in &step.retire {
-            retire(&mut scratch.states, *slot);
-        }
-        rescale(&mut scratch.states, &mut ln_scale);
+impl Matching {
+    /// Forgets all features.
+    pub fn clear(&mut self) {
+        self.pairs.clear();
+        self.ends.clear();
     }
-    let mut total = [0.0; LANES];
-    for state in &scratch.states {
-        for l in 0..LANES {
-            total[l] += state[l];
+
+    /// Adds a feature; order by wavelength keeps the frontier short. Features without readings
+    /// are left out.
+    pub fn push(&mut self, pairs: impl Iterator<Item = (usize, f64)>) {
+        let before = self.pairs.len();
+        self.pairs.extend(pairs);
+        if self.pairs.len() > before {
+            self.ends.push(self.pairs.len());
         }
     }
-    std::array::from_fn(|l| total[l].ln() + ln_scale[l])
-}
 
-/// Lets one more feature take at most one free reading. Masks descend so that the state a match
-/// comes from has not yet seen this feature.
-fn add_feature(states: &mut [Lanes], slot_of: &[usize], row: Row, scale: &Lanes) {
-    for mask in (1..states.len()).rev() {
-        let mut gain = [0.0; LANES];
-        for (reading, r) in row {
-            let bit = 1usize << slot_of[*reading];
-            if mask & bit != 0 {
-                let from = &states[mask ^ bit];
-                for l in 0..LANES {
-                    gain[l] += from[l] * (r * scale[l]);
+    /// ln Σ over matchings Π r, per lane; `scale[l]` = κ_ref/κ_l multiplies every r in lane l.
+    pub fn ln_sum(&mut self, scale: &Lanes) -> Lanes {
+        let readings = self.pairs.iter().map(|(j, _)| j + 1).max().unwrap_or(0);
+        self.last.clear();
+        self.last.resize(readings, 0);
+        let mut start = 0;
+        for (feature, end) in self.ends.iter().enumerate() {
+            for (j, _) in &self.pairs[start..*end] {
+                self.last[*j] = feature;
+            }
+            start = *end;
+        }
+        self.active.clear();
+        self.states.clear();
+        self.states.push([1.0; LANES]);
+        let mut ln_scale = [0.0; LANES];
+        let mut start = 0;
+        for feature in 0..self.ends.len() {
+            let end = self.ends[feature];
+            self.take(start, end, scale);
+            start = end;
+            self.retire(feature);
+            rescale(&mut self.states, &mut ln_scale);
+        }
+        std::array::from_fn(|l| self.states.iter().map(|s| s[l]).sum::<f64>().ln() + ln_scale[l])
+    }
+
+    /// Lets one more feature take at most one free reading. Masks descend so that the state a
+    /// match comes from has not yet seen this feature.
+    fn take(&mut self, start: usize, end: usize, scale: &Lanes) {
+        self.row.clear();
+        for (reading, r) in &self.pairs[start..end] {
+            let bit = match self.active.iter().position(|a| a == reading) {
+                Some(bit) => bit,
+                None if self.active.len() < FRONTIER => {
+                    self.active.push(*reading);
+                    self.states.resize(self.states.len() * 2, [0.0; LANES]);
+                    self.active.len() - 1
+                }
+                None => continue,
+            };
+            self.row.push((1 << bit, *r));
+        }
+        for mask in (1..self.states.len()).rev() {
+            let mut gain = [0.0; LANES];
+            for (bit, r) in &self.row {
+                if mask & bit != 0 {
+                    let from = &self.states[mask ^ bit];
+                    for l in 0..LANES {
+                        gain[l] += from[l] * (r * scale[l]);
+                    }
                 }
             }
-        }
-        for l in 0..LANES {
-            states[mask][l] += gain[l];
+            for l in 0..LANES {
+                self.states[mask][l] += gain[l];
+            }
         }
     }
-}
 
-/// Forgets whether the reading in a slot was taken.
-fn retire(states: &mut [Lanes], slot: usize) {
-    let bit = 1usize << slot;
-    for mask in 0..states.len() {
-        if mask & bit != 0 {
-            let taken = std::mem::replace(&mut states[mask], [0.0; LANES]);
-            for l in 0..LANES {
-                states[mask ^ bit][l] += taken[l];
+    /// Forgets whether readings were taken that no later feature reaches.
+    fn retire(&mut self, feature: usize) {
+        let mut bit = 0;
+        while bit < self.active.len() {
+            if self.last[self.active[bit]] > feature {
+                bit += 1;
+                continue;
             }
+            self.active.remove(bit);
+            let low = (1usize << bit) - 1;
+            let half = self.states.len() / 2;
+            for mask in 0..half {
+                // Spread the mask around the bit that goes: it never lies before the mask itself.
+                let open = (mask & low) | ((mask & !low) << 1);
+                let (free, taken) = (self.states[open], self.states[open | 1 << bit]);
+                for l in 0..LANES {
+                    self.states[mask][l] = free[l] + taken[l];
+                }
+            }
+            self.states.truncate(half);
         }
     }
 }
 
 /// Keeps long products within range: each lane on its own scale.
 fn rescale(states: &mut [Lanes], ln_scale: &mut Lanes) {
-    const HIGH: f64 = 1e150;
+    const HIGH: f64 = 1e100;
     for l in 0..LANES {
         let peak = states.iter().map(|s| s[l]).fold(0.0, f64::max);
         if peak > HIGH {
@@ -185,10 +161,12 @@ mod tests {
         sum
     }
 
-    fn frontier(rows: &[Vec<(usize, f64)>], readings: usize, scale: Lanes) -> Lanes {
-        let reach: Vec<Vec<usize>> = rows.iter().map(|r| r.iter().map(|(j, _)| *j).collect()).collect();
-        let plan = Plan::new(&reach, readings).expect("small");
-        ln_matchings(&plan, &scale, &mut Scratch::default(), |b, add| add(&rows[b]))
+    fn frontier(rows: &[Vec<(usize, f64)>], scale: Lanes) -> Lanes {
+        let mut matching = Matching::default();
+        for row in rows {
+            matching.push(row.iter().copied());
+        }
+        matching.ln_sum(&scale)
     }
 
     proptest::proptest! {
@@ -200,7 +178,7 @@ mod tests {
                 .iter()
                 .map(|row| row.iter().copied().enumerate().filter(|(_, r)| *r > 15.0).collect())
                 .collect();
-            let ln = frontier(&rows, 5, [1.0, 0.5, 0.1, 0.0]);
+            let ln = frontier(&rows, [1.0, 0.5, 0.1, 0.0]);
             let scaled = |s: f64| -> f64 {
                 let rows: Vec<Vec<(usize, f64)>> =
                     rows.iter().map(|row| row.iter().map(|(j, r)| (*j, r * s)).collect()).collect();
@@ -215,7 +193,13 @@ mod tests {
     #[test]
     fn long_products_stay_finite() {
         let rows: Vec<Vec<(usize, f64)>> = (0..300).map(|i| vec![(i, 1e6)]).collect();
-        let ln = frontier(&rows, 300, [1.0; LANES]);
+        let ln = frontier(&rows, [1.0; LANES]);
         assert!((ln[0] - 300.0 * (1e6f64).ln_1p()).abs() < 1e-6);
+    }
+
+    #[test]
+    fn a_crowd_beyond_the_frontier_is_no_disaster() {
+        let rows: Vec<Vec<(usize, f64)>> = (0..40).map(|_| (0..40).map(|j| (j, 2.0)).collect()).collect();
+        assert!(frontier(&rows, [1.0; LANES]).iter().all(|x| x.is_finite() && *x > 0.0));
     }
 }
