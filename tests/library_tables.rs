@@ -160,8 +160,9 @@ fn the_first_edition_holds_what_it_must() {
     for symbol in elements.split(' ') {
         assert!(library().find(symbol).is_ok(), "{symbol}");
     }
-    let bands = "CaOH CaCl SrOH SrCl BaOH BaO BaCl CuOH CuCl CuH BO2 N2 N2+ CO OH CH C2";
-    for name in bands.split(' ') {
+    let bands = "CaOH;CaCl;SrOH;SrCl;BaOH;BaO;BaCl;CuOH;CuCl;CuH;BO2;OH;CH;C2 Swan;CO Angstrom;\
+                 N2 first positive;N2 second positive;N2+";
+    for name in bands.split(';') {
         emitter(name);
     }
     // The worst near coincidence (library issue; NIST ASD): He 667.815, Ne 667.828.

@@ -1,125 +1,16 @@
 //! The rows of each table as they are read, and what can be said against a single row.
 
-use super::load::LibraryFault;
-use super::table::{Bounds, Cell, Column, Row, TableFile, needed, optional, read};
-use super::{
-    Composed, Emitter, EmitterKind, Excitation, Feature, Form, PriorClass, Source, SourceKind,
-    Standing, Substance, SubstanceKind,
+use super::layout::{
+    CAUTIONS, COMPLETE_TO_DEX, COMPOSED, DEGRADES, EMITTER_KINDS, EMITTERS, ENERGY_PER_CM,
+    FEATURES, FORMS, LEVEL_DEX, LEVEL_SPREAD_DEX, LISTS, PERSISTENT, POSITIVE, PRIOR_CLASSES,
+    SCATTER_DEX, SHOWS, SOURCE_KINDS, SOURCES, STANDINGS, STRENGTH_DEX, SUBSTANCE_KINDS,
+    SUBSTANCES, UNCERTAINTY_NM, WAVELENGTH_NM, WIDTH_NM,
 };
+use super::load::LibraryFault;
+use super::table::{Cell, Row, TableFile, read};
+use super::{Composed, Emitter, Excitation, Feature, Source, Substance, SubstanceKind};
 use crate::reduction::air::AirWavelength;
 use std::collections::HashMap;
-
-const SUBSTANCE_KINDS: [(&str, SubstanceKind); 4] = [
-    ("element", SubstanceKind::Element),
-    ("molecule", SubstanceKind::Molecule),
-    ("phosphor", SubstanceKind::Phosphor),
-    ("lamp", SubstanceKind::Lamp),
-];
-const PRIOR_CLASSES: [(&str, PriorClass); 5] = [
-    ("ubiquitous", PriorClass::Ubiquitous),
-    ("background", PriorClass::Background),
-    ("usual", PriorClass::Usual),
-    ("rare", PriorClass::Rare),
-    ("never", PriorClass::Never),
-];
-const SOURCE_KINDS: [(&str, SourceKind); 3] = [
-    ("flame", SourceKind::Flame),
-    ("discharge", SourceKind::Discharge),
-    ("absorption", SourceKind::Absorption),
-];
-const EMITTER_KINDS: [(&str, EmitterKind); 4] = [
-    ("atom", EmitterKind::Atom),
-    ("ion", EmitterKind::Ion),
-    ("molecule", EmitterKind::Molecule),
-    ("phosphor", EmitterKind::Phosphor),
-];
-const FORMS: [(&str, Form); 3] = [
-    ("line", Form::Line),
-    ("band_head", Form::BandHead),
-    ("band_max", Form::BandMax),
-];
-const STANDINGS: [(&str, Standing); 5] = [
-    ("published", Standing::Published),
-    ("computed", Standing::Computed),
-    ("measured", Standing::Measured),
-    ("memory", Standing::Memory),
-    ("shaky", Standing::Shaky),
-];
-const DEGRADES: [(&str, Option<&str>); 4] = [
-    ("", None),
-    ("red", Some("red")),
-    ("violet", Some("violet")),
-    ("headless", Some("headless")),
-];
-const PERSISTENT: [(&str, bool); 2] = [("", false), ("yes", true)];
-
-const WAVELENGTH_NM: Bounds = Bounds::between(240.0, 1100.0);
-const UNCERTAINTY_NM: Bounds = Bounds::above(0.0, 20.0);
-const WIDTH_NM: Bounds = Bounds::above(0.0, 500.0);
-const STRENGTH_DEX: Bounds = Bounds::between(-100.0, 100.0);
-const SCATTER_DEX: Bounds = Bounds::between(0.0, 5.0);
-const SHOWS: Bounds = Bounds::between(0.0, 1.0);
-const LEVEL_DEX: Bounds = Bounds::between(-20.0, 0.0);
-const LEVEL_SPREAD_DEX: Bounds = Bounds::between(0.0, 5.0);
-const COMPLETE_TO_DEX: Bounds = Bounds::between(-20.0, 0.0);
-const POSITIVE: Bounds = Bounds::above(0.0, f64::INFINITY);
-const ENERGY_PER_CM: Bounds = Bounds::between(0.0, 1.0e6);
-
-const SOURCES: [Column; 5] = [
-    needed("key"),
-    needed("citation"),
-    optional("version"),
-    optional("licence"),
-    needed("standing"),
-];
-const CAUTIONS: [Column; 2] = [needed("key"), needed("text")];
-const SUBSTANCES: [Column; 11] = [
-    needed("id"),
-    needed("name"),
-    needed("symbol"),
-    needed("kind"),
-    optional("aliases"),
-    needed("prior_flame"),
-    needed("prior_discharge"),
-    needed("prior_absorption"),
-    optional("flame_colour"),
-    optional("cautions"),
-    optional("note"),
-];
-const EMITTERS: [Column; 10] = [
-    needed("emitter"),
-    needed("substance"),
-    needed("source_kind"),
-    needed("kind"),
-    needed("shows"),
-    needed("level_dex"),
-    needed("level_spread_dex"),
-    needed("complete_to_dex"),
-    optional("remark"),
-    needed("source"),
-];
-const FEATURES: [Column; 18] = [
-    needed("emitter"),
-    needed("form"),
-    needed("wavelength_air_nm"),
-    needed("uncertainty_nm"),
-    optional("degrades"),
-    optional("width_nm"),
-    optional("strength_flame_dex"),
-    optional("strength_discharge_dex"),
-    optional("strength_absorption_dex"),
-    needed("scatter_dex"),
-    optional("persistent"),
-    optional("transition_rate_per_s"),
-    optional("upper_weight"),
-    optional("lower_level_cm-1"),
-    optional("upper_level_cm-1"),
-    needed("source_position"),
-    needed("source_strength"),
-    optional("note"),
-];
-const COMPOSED: [Column; 3] = [needed("name"), needed("parts"), optional("where_met")];
-const LISTS: [Column; 2] = [needed("list"), needed("substance")];
 
 /// A row that became something, with the line it stands on.
 pub(super) struct Placed<T> {

@@ -3,6 +3,7 @@
 
 mod assemble;
 mod draft;
+mod layout;
 mod load;
 mod names;
 mod priors;
