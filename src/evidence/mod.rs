@@ -2,6 +2,24 @@
 //!
 //! Knows no instrument and no format: it takes plain numbers and gives plain numbers.
 
+mod assembly;
+mod blend;
+mod composition;
+mod density;
+mod exhaustive;
+mod matching;
+mod prepare;
+mod quadrature;
+mod search;
+mod settings;
+mod summary;
+
+pub use density::median;
+pub use exhaustive::{Entry, Exhaustive, exhaustive};
+pub use quadrature::Quadrature;
+pub use settings::{MixtureRule, PresenceRule, Settings};
+pub use summary::{infer, infer_with};
+
 /// One reading as the model sees it.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Observation {
@@ -32,6 +50,9 @@ pub struct Conditions {
     pub offset_nm: f64,
     /// Standard uncertainty of a stretch common to all readings.
     pub scale_relative: f64,
+    /// Pairs of readings told apart although closer than `resolution_nm`: near them the merge
+    /// width is their distance.
+    pub splits_nm: Vec<[f64; 2]>,
 }
 
 /// The form of a reference feature.

@@ -1,10 +1,16 @@
 //! What is known: substances, their emitters, lines and band heads, each with
 //! its source. Loading checks everything; a loaded library is consistent.
 
+mod assemble;
+mod draft;
 mod load;
 mod names;
+mod priors;
+mod table;
 
 pub use load::{LibraryError, LibraryFault, embedded, extend_from, load_folder};
+pub use names::NameError;
+pub use priors::Selection;
 
 use crate::reduction::air::AirWavelength;
 use serde::{Deserialize, Serialize};
@@ -146,10 +152,11 @@ pub struct Feature {
     pub lower_level_per_cm: Option<f64>,
     /// Upper level, cm⁻¹, if known.
     pub upper_level_per_cm: Option<f64>,
-    /// Index into [`Library::sources`] for the position.
-    pub source_position: usize,
-    /// Index into [`Library::sources`] for the strengths.
-    pub source_strength: usize,
+    /// Indices into [`Library::sources`] for the position.
+    pub source_position: Vec<usize>,
+    /// Indices into [`Library::sources`] for the strengths: values first, then the rules that
+    /// made strengths of them.
+    pub source_strength: Vec<usize>,
     /// Remarks.
     pub note: String,
     /// Row in its table (line of the file).
@@ -169,6 +176,8 @@ pub struct Excitation {
     pub complete_to_dex: f64,
     /// Remark for the reader.
     pub remark: String,
+    /// Indices into [`Library::sources`] for the chance and the level.
+    pub source: Vec<usize>,
 }
 
 /// An emitter (`Ca I`, `CaOH`) with its features.

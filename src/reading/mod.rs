@@ -4,11 +4,20 @@
 //! they were written in and [`crate::reduction`] turns them into air
 //! wavelengths.
 
+mod decode;
+mod header;
+mod number;
+mod owner;
+mod quote;
+mod records;
+mod row;
 mod table;
 
-pub use table::{TableError, read_table};
+pub use quote::{escape_control, quoted, shorten};
+pub use table::read_table;
 
 use std::collections::BTreeSet;
+use std::fmt;
 
 /// The position of a reading in the unit of its column.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -86,7 +95,9 @@ pub struct Reading {
 /// The readings that belong together.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Sample {
-    /// Name from the `sample` column, or the file stem.
+    /// Name from the `sample` column, or the file stem (`stdin` for standard input). Control
+    /// characters are escaped and runs of white space are one space; so they are in
+    /// `repeat_of`, `observer` and `label`, but a note is as written.
     pub name: String,
     /// Rows in the order of the file.
     pub readings: Vec<Reading>,
@@ -95,7 +106,8 @@ pub struct Sample {
 /// How a table was written, as found out by reading it.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub struct Dialect {
-    /// `UTF-8`, `UTF-8 with BOM`, `UTF-16LE`, `UTF-16BE` or `Windows-1252`.
+    /// `UTF-8`, `UTF-8 with BOM`, `UTF-16LE`, `UTF-16BE` or `Windows-1252`; `unknown` for bytes
+    /// that are no text.
     pub encoding: &'static str,
     /// `,` `;` or tab; absent for a one-column table.
     pub separator: Option<char>,
@@ -104,6 +116,9 @@ pub struct Dialect {
 }
 
 /// Something that cannot be used: a row, a sample or a whole file.
+///
+/// Column, text and message quote at most 40 characters of a cell, and control characters are
+/// escaped: they can be printed as they are.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub struct Refusal {
     /// Input as named on the command line.
@@ -118,6 +133,20 @@ pub struct Refusal {
     pub text: Option<String>,
     /// What is wrong, what was expected and what to try; lower case, no full stop.
     pub message: String,
+}
+
+/// `readings.csv: row 7, column wavelength_nm: "58 9.0" is not a number (did you mean 589.0?)`
+impl fmt::Display for Refusal {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        write!(f, "{}: ", escape_control(&self.input))?;
+        match (self.row, &self.column) {
+            (Some(row), Some(column)) => write!(f, "row {row}, column {column}: ")?,
+            (Some(row), None) => write!(f, "row {row}: ")?,
+            (None, Some(column)) => write!(f, "column {column}: ")?,
+            (None, None) => {}
+        }
+        f.write_str(&self.message)
+    }
 }
 
 /// A remark about a table that does not stop its use.
@@ -147,12 +176,19 @@ pub struct Table {
     /// Samples that can be used, in order of first appearance.
     pub samples: Vec<Sample>,
     /// Everything that was refused, in order of rows. A refused row refuses its whole sample,
-    /// which then is not in `samples`.
+    /// which then is not in `samples`. An entry without a sample refuses the file.
     pub refused: Vec<Refusal>,
-    /// Names of refused samples.
+    /// Names of samples refused for a row of their own.
     pub refused_samples: BTreeSet<String>,
     /// Remarks, in order of columns.
     pub remarks: Vec<TableRemark>,
-    /// `#` comment lines without the mark, in order.
+    /// `#` comment lines without the mark, in order; else as written, not escaped.
     pub comments: Vec<String>,
+}
+
+impl Table {
+    /// The file as a whole was refused; no sample of it can be used.
+    pub fn is_refused(&self) -> bool {
+        self.refused.iter().any(|refusal| refusal.sample.is_none())
+    }
 }

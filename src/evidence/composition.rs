@@ -1,0 +1,673 @@
+//! The evidence of one composition: amounts, emitter shifts, common shift and clutter rate
+//! integrated out, counting only what was seen.
+
+use super::assembly::{Assembly, Latent, Stock, Workspace};
+use super::density::ln_sum_exp;
+use super::matching::{LANES, Lanes};
+use super::settings::MixtureRule;
+
+/// A composition with its evidence.
+#[derive(Debug, Clone)]
+pub struct Weighed {
+    /// Candidate indices, ascending.
+    pub members: Vec<usize>,
+    /// ln E*(S).
+    pub ln_evidence: f64,
+    /// ln of the integrand by shift node and clutter lane, without their weights.
+    pub nodes: Vec<Lanes>,
+    /// The latent state with the largest weighted integrand.
+    pub mode: Vec<Latent>,
+    /// Lines of different members that blend.
+    pub chains: usize,
+}
+
+/// Members whose absence would matter less than this are not barred in turn.
+const CERTAIN: f64 = 1e-7;
+/// Most members barred in turn: 2^6 sets.
+const MOST_BARRED: usize = 6;
+/// Shift nodes below this share of the best are left out.
+const NEGLIGIBLE_LN: f64 = -18.0;
+
+/// ln Σ w over shift nodes and lanes.
+pub fn ln_total(stock: &Stock, nodes: &[Lanes]) -> f64 {
+    let mut terms = Vec::with_capacity(nodes.len() * LANES);
+    for (node, weight) in nodes.iter().zip(stock.scene.offset.weights()) {
+        for l in 0..LANES {
+            terms.push(node[l] + weight.ln() + stock.lane_ln_weight[l]);
+        }
+    }
+    ln_sum_exp(&terms)
+}
+
+/// Weighs a composition. `start` gives an amount node for each member to begin from.
+pub fn weigh(stock: &Stock, members: &[usize], start: &[Latent], barring: bool) -> Weighed {
+    let hopeless = barring && members.iter().any(|m| stock.prepared[*m].pairs.is_empty());
+    if hopeless {
+        let nodes = vec![[f64::NEG_INFINITY; LANES]; stock.scene.offset.len()];
+        let mode = start.to_vec();
+        return Weighed { members: members.to_vec(), ln_evidence: f64::NEG_INFINITY, nodes, mode, chains: 0 };
+    }
+    if members.is_empty() {
+        let nodes = vec![[0.0; LANES]; stock.scene.offset.len()];
+        let ln_evidence = ln_total(stock, &nodes);
+        return Weighed { members: Vec::new(), ln_evidence, nodes, mode: Vec::new(), chains: 0 };
+    }
+    let assembly = Assembly::new(stock, members);
+    let mut profile = Profile::new(stock, &assembly, start.to_vec(), barring);
+    let nodes = match stock.scene.settings.mixture {
+        MixtureRule::Product => {
+            profile.climb();
+            // Away from the start other members may be in doubt.
+            if barring && profile.bar_more() {
+                profile.climb();
+            }
+            profile.product()
+        }
+        MixtureRule::Joint => profile.joint(),
+    };
+    Weighed {
+        members: members.to_vec(),
+        ln_evidence: ln_total(stock, &nodes),
+        nodes,
+        mode: profile.latents.clone(),
+        chains: assembly.chains,
+    }
+}
+
+/// A middling state to begin from.
+pub fn middle(stock: &Stock, candidate: usize) -> Latent {
+    Latent {
+        amount: stock.scene.amount.len() / 2,
+        shifts: stock.prepared[candidate].shifts.iter().map(|q| q.len() / 2).collect(),
+    }
+}
+
+/// ln of every term of the integrand by (shift in use, lane).
+type Slice = Vec<Lanes>;
+/// ln sums of one segment, `[local bars][shift]`, and ln missing of its chains.
+type Value = (Vec<Lanes>, f64);
+/// A segment with its value in another state.
+type Replaced = (usize, Value);
+
+/// The integrand about one latent state.
+pub struct Profile<'s, 'a> {
+    stock: &'s Stock<'a>,
+    assembly: &'s Assembly,
+    /// The state everything is relative to.
+    pub latents: Vec<Latent>,
+    /// Members barred in turn.
+    doubtful: Vec<usize>,
+    /// Shift nodes in use.
+    pub shifts: Vec<usize>,
+    /// Per segment: barred members that live there, as positions in `doubtful`.
+    local_bars: Vec<Vec<usize>>,
+    /// Per segment: ln sums `[local bars][shift]` and ln missing of chains, at `latents`.
+    values: Vec<Value>,
+    /// Segments by member, and by (member, emitter).
+    by_member: Vec<Vec<usize>>,
+    by_emitter: Vec<Vec<Vec<usize>>>,
+    work: Workspace,
+}
+
+impl<'s, 'a> Profile<'s, 'a> {
+    /// Evaluates the starting state; decides which members have to be barred in turn.
+    pub fn new(stock: &'s Stock<'a>, assembly: &'s Assembly, latents: Vec<Latent>, barring: bool) -> Self {
+        let count = assembly.members.len();
+        let by_member = (0..count)
+            .map(|m| positions(&assembly.segments, |s| s.members.contains(&m)))
+            .collect();
+        let by_emitter = (0..count)
+            .map(|m| {
+                let emitters = stock.prepared[assembly.members[m]].shifts.len();
+                (0..emitters)
+                    .map(|e| positions(&assembly.segments, |s| s.emitters.contains(&(m, e))))
+                    .collect()
+            })
+            .collect();
+        let mut profile = Self {
+            stock,
+            assembly,
+            latents,
+            doubtful: Vec::new(),
+            shifts: (0..stock.scene.offset.len()).collect(),
+            local_bars: vec![Vec::new(); assembly.segments.len()],
+            values: Vec::new(),
+            by_member,
+            by_emitter,
+            work: Workspace::default(),
+        };
+        if barring {
+            profile.doubtful = profile.find_doubtful();
+            profile.place_bars();
+        }
+        profile.refresh();
+        profile
+    }
+
+    /// Bars members that became doubtful at the present state; says whether there were any.
+    fn bar_more(&mut self) -> bool {
+        let mut all = self.find_doubtful();
+        all.retain(|m| !self.doubtful.contains(m));
+        all.truncate(MOST_BARRED.saturating_sub(self.doubtful.len()));
+        if all.is_empty() {
+            return false;
+        }
+        self.doubtful.extend(all);
+        self.doubtful.sort_unstable();
+        self.place_bars();
+        self.refresh();
+        true
+    }
+
+    fn place_bars(&mut self) {
+        for (bars, segment) in self.local_bars.iter_mut().zip(&self.assembly.segments) {
+            *bars = positions(&self.doubtful, |m| segment.members.contains(m));
+        }
+    }
+
+    /// Members that might have caused nothing: exp(ln L barred − ln L) above a threshold anywhere.
+    fn find_doubtful(&mut self) -> Vec<usize> {
+        let count = self.assembly.members.len();
+        if count == 1 {
+            return vec![0];
+        }
+        let mut ratio = vec![vec![[0.0; LANES]; self.shifts.len()]; count];
+        for segment in &self.assembly.segments {
+            for m in &segment.members {
+                let mut out = Vec::new();
+                self.assembly.ln_segment(
+                    self.stock, segment, &self.latents, &self.shifts, &[*m], None, &mut self.work, &mut out,
+                );
+                let half = self.shifts.len();
+                for d in 0..half {
+                    for l in 0..LANES {
+                        ratio[*m][d][l] += out[half + d][l] - out[d][l];
+                    }
+                }
+            }
+        }
+        let mut worst: Vec<(f64, usize)> = ratio
+            .iter()
+            .enumerate()
+            .map(|(m, nodes)| (nodes.iter().flatten().copied().fold(f64::NEG_INFINITY, f64::max), m))
+            .filter(|(ln, _)| *ln > CERTAIN.ln())
+            .collect();
+        worst.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1)));
+        worst.truncate(MOST_BARRED);
+        let mut doubtful: Vec<usize> = worst.into_iter().map(|(_, m)| m).collect();
+        doubtful.sort_unstable();
+        doubtful
+    }
+
+    fn evaluate(&mut self, segment: usize, latents: &[Latent], without: Option<usize>) -> Value {
+        let barred: Vec<usize> = self.local_bars[segment].iter().map(|i| self.doubtful[*i]).collect();
+        let mut out = Vec::new();
+        let missing = self.assembly.ln_segment(
+            self.stock,
+            &self.assembly.segments[segment],
+            latents,
+            &self.shifts,
+            &barred,
+            without,
+            &mut self.work,
+            &mut out,
+        );
+        (out, missing)
+    }
+
+    fn refresh(&mut self) {
+        let latents = self.latents.clone();
+        self.values = (0..self.assembly.segments.len())
+            .map(|s| self.evaluate(s, &latents, None))
+            .collect();
+    }
+
+    fn own_missing(&self, latents: &[Latent]) -> f64 {
+        latents
+            .iter()
+            .enumerate()
+            .map(|(m, latent)| self.assembly.own_missing(self.stock, m, latent))
+            .sum()
+    }
+
+    /// ln L* = ln Σ_B (−1)^|B| L(B barred), with some segments replaced: the last layer that
+    /// holds a segment counts.
+    fn ln_star(&self, latents: &[Latent], layers: &[&[Replaced]]) -> Slice {
+        let value = |s: usize| {
+            layers
+                .iter()
+                .rev()
+                .find_map(|layer| layer.iter().find(|(c, _)| *c == s))
+                .map_or(&self.values[s], |(_, v)| v)
+        };
+        let count = self.shifts.len();
+        let sets = 1usize << self.doubtful.len();
+        let mut ln = vec![vec![[0.0; LANES]; count]; sets];
+        let mut missing = self.own_missing(latents);
+        for s in 0..self.values.len() {
+            let (sums, chain_missing) = value(s);
+            missing += chain_missing;
+            for (set, row) in ln.iter_mut().enumerate() {
+                let local = self.local_bars[s]
+                    .iter()
+                    .enumerate()
+                    .fold(0, |acc, (bit, i)| acc | (set >> i & 1) << bit);
+                for (to, from) in row.iter_mut().zip(&sums[local * count..]) {
+                    for l in 0..LANES {
+                        to[l] += from[l];
+                    }
+                }
+            }
+        }
+        (0..count)
+            .map(|d| {
+                std::array::from_fn(|l| {
+                    let whole = ln[0][d][l];
+                    let share: f64 = (0..sets)
+                        .map(|set| {
+                            let sign = if set.count_ones() % 2 == 0 { 1.0 } else { -1.0 };
+                            sign * (ln[set][d][l] - whole).exp()
+                        })
+                        .sum();
+                    missing + whole + share.max(0.0).ln()
+                })
+            })
+            .collect()
+    }
+
+    /// The integrand in a state that differs from the present one in the given segments.
+    fn slice(&mut self, latents: &[Latent], touched: &[usize]) -> Slice {
+        let changed = self.replace(latents, touched, None);
+        self.ln_star(latents, &[&changed])
+    }
+
+    fn replace(&mut self, latents: &[Latent], touched: &[usize], without: Option<usize>) -> Vec<Replaced> {
+        touched
+            .iter()
+            .map(|s| (*s, self.evaluate(*s, latents, without)))
+            .collect()
+    }
+
+    fn ln_weighted(&self, slice: &Slice) -> f64 {
+        let weights = self.stock.scene.offset.weights();
+        let terms: Vec<f64> = slice
+            .iter()
+            .zip(&self.shifts)
+            .flat_map(|(lanes, d)| {
+                let ln = weights[*d].ln();
+                (0..LANES).map(move |l| lanes[l] + ln + self.stock.lane_ln_weight[l])
+            })
+            .collect();
+        ln_sum_exp(&terms)
+    }
+
+    fn shift_ln_weight(&self, m: usize, latent: &Latent) -> f64 {
+        let prepared = &self.stock.prepared[self.assembly.members[m]];
+        prepared
+            .shifts
+            .iter()
+            .zip(&latent.shifts)
+            .map(|(q, b)| q.weights()[*b].ln())
+            .sum()
+    }
+
+    /// Coordinate ascent to one mode over all amounts and emitter shifts.
+    pub fn climb(&mut self) {
+        const MOST_SWEEPS: usize = 8;
+        self.choose_start();
+        let members = self.assembly.members.len();
+        for sweep in 0..MOST_SWEEPS {
+            let mut moved = false;
+            for m in 0..members {
+                moved |= self.climb_amount(m);
+                moved |= self.climb_shifts(m);
+            }
+            if sweep == 0 {
+                self.drop_negligible_shifts();
+            }
+            if !moved {
+                break;
+            }
+        }
+    }
+
+    /// Coordinate ascent can stop on a ridge: begins from the best of the present state and
+    /// equal amounts throughout.
+    fn choose_start(&mut self) {
+        let count = self.stock.scene.amount.len();
+        let all: Vec<usize> = (0..self.values.len()).collect();
+        let present = self.ln_star(&self.latents, &[]);
+        let mut best = (self.ln_weighted(&present), self.latents.clone());
+        for quarter in 1..=4 {
+            let mut latents = self.latents.clone();
+            for latent in &mut latents {
+                latent.amount = (count * quarter / 4).saturating_sub(1);
+            }
+            let slice = self.slice(&latents, &all);
+            let value = self.ln_weighted(&slice);
+            if value > best.0 {
+                best = (value, latents);
+            }
+        }
+        if best.1 != self.latents {
+            self.latents = best.1;
+            self.refresh();
+        }
+    }
+
+    fn climb_amount(&mut self, m: usize) -> bool {
+        let count = self.stock.scene.amount.len();
+        let touched = self.by_member[m].clone();
+        self.choose(m, &touched, (0..count).map(|k| move |l: &mut Latent| l.amount = k))
+    }
+
+    fn climb_shifts(&mut self, m: usize) -> bool {
+        let mut moved = false;
+        for e in 0..self.by_emitter[m].len() {
+            let count = self.stock.prepared[self.assembly.members[m]].shifts[e].len();
+            if count > 1 {
+                let touched = self.by_emitter[m][e].clone();
+                moved |= self.choose(m, &touched, (0..count).map(|b| move |l: &mut Latent| l.shifts[e] = b));
+            }
+        }
+        moved
+    }
+
+    /// Moves one member to the best of several states; says whether it moved.
+    fn choose<F: Fn(&mut Latent)>(&mut self, m: usize, touched: &[usize], options: impl Iterator<Item = F>) -> bool {
+        let mut best = (f64::NEG_INFINITY, self.latents.clone());
+        for set in options {
+            let mut latents = self.latents.clone();
+            set(&mut latents[m]);
+            let slice = self.slice(&latents, touched);
+            let value = self.ln_weighted(&slice) + self.shift_ln_weight(m, &latents[m]);
+            if value > best.0 {
+                best = (value, latents);
+            }
+        }
+        if best.1 == self.latents {
+            return false;
+        }
+        self.latents = best.1;
+        for s in touched {
+            let latents = self.latents.clone();
+            self.values[*s] = self.evaluate(*s, &latents, None);
+        }
+        true
+    }
+
+    /// Leaves out shifts that carry nothing at the present state.
+    fn drop_negligible_shifts(&mut self) {
+        let now = self.ln_star(&self.latents, &[]);
+        let weights = self.stock.scene.offset.weights();
+        let per_shift: Vec<f64> = now
+            .iter()
+            .zip(&self.shifts)
+            .map(|(lanes, d)| {
+                let terms: Vec<f64> = (0..LANES).map(|l| lanes[l] + self.stock.lane_ln_weight[l]).collect();
+                ln_sum_exp(&terms) + weights[*d].ln()
+            })
+            .collect();
+        let best = per_shift.iter().copied().fold(f64::NEG_INFINITY, f64::max);
+        if !best.is_finite() {
+            return;
+        }
+        let kept: Vec<usize> = self
+            .shifts
+            .iter()
+            .zip(&per_shift)
+            .filter(|(_, ln)| **ln - best > NEGLIGIBLE_LN)
+            .map(|(d, _)| *d)
+            .collect();
+        if kept.len() < self.shifts.len() {
+            self.shifts = kept;
+            self.refresh();
+        }
+    }
+
+    /// ln of the profile of one member: Σ_α w/Z · L*(α)/L*(mode) · Π_e Σ_β w · L*(α, β_e)/L*(α).
+    fn member_profile(&mut self, m: usize, mode: &Slice) -> Slice {
+        let candidate = self.assembly.members[m];
+        let ln_z = self.stock.prepared[candidate].detectability.max(f64::MIN_POSITIVE).ln();
+        let touched = self.by_member[m].clone();
+        let amount = self.stock.scene.amount.clone();
+        let mut terms: Vec<Vec<f64>> = vec![Vec::new(); mode.len() * LANES];
+        let mode_peak = peak(mode);
+        for (k, weight) in amount.weights().iter().enumerate() {
+            let mut latents = self.latents.clone();
+            latents[m].amount = k;
+            let changed = self.replace(&latents, &touched, None);
+            let mut slice = self.ln_star(&latents, &[&changed]);
+            if peak(&slice) - mode_peak > -30.0 {
+                self.integrate_shifts(m, &latents, &changed, &mut slice);
+            }
+            for (d, lanes) in slice.iter().enumerate() {
+                for l in 0..LANES {
+                    terms[d * LANES + l].push(lanes[l] - mode[d][l] + weight.ln() - ln_z);
+                }
+            }
+        }
+        (0..mode.len())
+            .map(|d| std::array::from_fn(|l| ln_sum_exp(&terms[d * LANES + l])))
+            .collect()
+    }
+
+    /// Multiplies a slice by the integral over each emitter shift of its member.
+    fn integrate_shifts(&mut self, m: usize, latents: &[Latent], changed: &[Replaced], slice: &mut Slice) {
+        let base = slice.clone();
+        let candidate = self.assembly.members[m];
+        for e in 0..self.by_emitter[m].len() {
+            let shift = self.stock.prepared[candidate].shifts[e].clone();
+            if shift.len() == 1 {
+                continue;
+            }
+            let touched = self.by_emitter[m][e].clone();
+            let mut mean = vec![[0.0; LANES]; base.len()];
+            for (b, weight) in shift.weights().iter().enumerate() {
+                let mut other = latents.to_vec();
+                other[m].shifts[e] = b;
+                let own = self.replace(&other, &touched, None);
+                let option = self.ln_star(&other, &[changed, &own]);
+                for (sum, (o, at)) in mean.iter_mut().zip(option.iter().zip(&base)) {
+                    for l in 0..LANES {
+                        sum[l] += weight * (o[l] - at[l]).exp();
+                    }
+                }
+            }
+            for (to, factor) in slice.iter_mut().zip(mean) {
+                for l in 0..LANES {
+                    if factor[l].is_finite() && factor[l] > 0.0 {
+                        to[l] += factor[l].ln();
+                    }
+                }
+            }
+        }
+    }
+
+    /// The product approximation about the mode, on all shift nodes.
+    pub fn product(&mut self) -> Vec<Lanes> {
+        let mode = self.ln_star(&self.latents, &[]);
+        let mut total = mode.clone();
+        for m in 0..self.assembly.members.len() {
+            let profile = self.member_profile(m, &mode);
+            add(&mut total, &profile);
+        }
+        self.spread(total)
+    }
+
+    /// The full joint grid, on all shift nodes.
+    fn joint(&mut self) -> Vec<Lanes> {
+        let all: Vec<usize> = (0..self.assembly.segments.len()).collect();
+        let mut states: Vec<(Vec<Latent>, f64)> = vec![(Vec::new(), 0.0)];
+        for candidate in &self.assembly.members {
+            let prepared = &self.stock.prepared[*candidate];
+            let own = grid(self.stock, prepared);
+            states = states
+                .iter()
+                .flat_map(|(before, ln)| {
+                    own.iter().map(move |(latent, w)| {
+                        let mut next = before.clone();
+                        next.push(latent.clone());
+                        (next, ln + w)
+                    })
+                })
+                .collect();
+        }
+        let mut terms: Vec<Vec<f64>> = vec![Vec::new(); self.shifts.len() * LANES];
+        for (latents, ln_weight) in &states {
+            let slice = self.slice(latents, &all);
+            for (d, lanes) in slice.iter().enumerate() {
+                for l in 0..LANES {
+                    terms[d * LANES + l].push(lanes[l] + ln_weight);
+                }
+            }
+        }
+        let total = (0..self.shifts.len())
+            .map(|d| std::array::from_fn(|l| ln_sum_exp(&terms[d * LANES + l])))
+            .collect();
+        self.spread(total)
+    }
+
+    /// P(nothing caused it) by reading: E*(S; reading barred)/E*(S), amounts about the mode
+    /// integrated, emitter shifts kept. `nodes` weigh shifts and lanes.
+    pub fn unexplained(&mut self, nodes: &[Lanes]) -> Vec<f64> {
+        if self.assembly.members.is_empty() {
+            return vec![1.0; self.stock.scene.observations.len()];
+        }
+        let mode = self.ln_star(&self.latents, &[]);
+        let amounts: Vec<Vec<(Vec<Latent>, Vec<Replaced>, Slice)>> =
+            (0..self.assembly.members.len()).map(|m| self.amount_slices(m)).collect();
+        (0..self.stock.scene.observations.len())
+            .map(|j| self.unexplained_reading(j, &mode, &amounts, nodes))
+            .collect()
+    }
+
+    /// State, changed segments and integrand for every amount of one member.
+    fn amount_slices(&mut self, m: usize) -> Vec<(Vec<Latent>, Vec<Replaced>, Slice)> {
+        let touched = self.by_member[m].clone();
+        (0..self.stock.scene.amount.len())
+            .map(|k| {
+                let mut latents = self.latents.clone();
+                latents[m].amount = k;
+                let changed = self.replace(&latents, &touched, None);
+                let slice = self.ln_star(&latents, &[&changed]);
+                (latents, changed, slice)
+            })
+            .collect()
+    }
+
+    fn unexplained_reading(
+        &mut self,
+        reading: usize,
+        mode: &Slice,
+        amounts: &[Vec<(Vec<Latent>, Vec<Replaced>, Slice)>],
+        nodes: &[Lanes],
+    ) -> f64 {
+        let here = positions(&self.assembly.segments, |s| s.readings.contains(&reading));
+        if here.is_empty() {
+            return 1.0;
+        }
+        let latents = self.latents.clone();
+        let bare = self.replace(&latents, &here, Some(reading));
+        let bare_mode = self.ln_star(&latents, &[&bare]);
+        let mut ratio = bare_mode.clone();
+        subtract(&mut ratio, mode);
+        for (m, states) in amounts.iter().enumerate() {
+            if !here.iter().any(|s| self.assembly.segments[*s].members.contains(&m)) {
+                continue;
+            }
+            let mut sums = vec![[[0.0; LANES]; 2]; mode.len()];
+            for (state, changed, with) in states {
+                let own = self.replace(state, &here, Some(reading));
+                let without = self.ln_star(state, &[changed, &own]);
+                for (d, sum) in sums.iter_mut().enumerate() {
+                    for l in 0..LANES {
+                        sum[0][l] += (without[d][l] - mode[d][l]).exp();
+                        sum[1][l] += (with[d][l] - mode[d][l]).exp();
+                    }
+                }
+            }
+            for (d, sum) in sums.iter().enumerate() {
+                for l in 0..LANES {
+                    ratio[d][l] += (sum[0][l] / sum[1][l]).ln() - (bare_mode[d][l] - mode[d][l]);
+                }
+            }
+        }
+        self.mean_over_nodes(&ratio, nodes)
+    }
+
+    /// Mean of exp(ln) over shifts and lanes, weighted by the evidence in `nodes`.
+    fn mean_over_nodes(&self, ln: &Slice, nodes: &[Lanes]) -> f64 {
+        let weights = self.stock.scene.offset.weights();
+        let total = ln_total(self.stock, nodes);
+        let mut mean = 0.0;
+        for (lanes, d) in ln.iter().zip(&self.shifts) {
+            for l in 0..LANES {
+                let share = (nodes[*d][l] + weights[*d].ln() + self.stock.lane_ln_weight[l] - total).exp();
+                if share > 0.0 && !lanes[l].is_nan() {
+                    mean += share * lanes[l].exp().min(1.0);
+                }
+            }
+        }
+        mean
+    }
+
+    /// Puts a slice back on all shift nodes; nodes left out carry nothing.
+    fn spread(&self, slice: Slice) -> Vec<Lanes> {
+        let mut nodes = vec![[f64::NEG_INFINITY; LANES]; self.stock.scene.offset.len()];
+        for (d, lanes) in self.shifts.iter().zip(slice) {
+            nodes[*d] = lanes.map(|x| if x.is_nan() { f64::NEG_INFINITY } else { x });
+        }
+        nodes
+    }
+}
+
+/// Every latent state of one substance with ln of its weight over Z.
+fn grid(stock: &Stock, prepared: &super::prepare::Prepared) -> Vec<(Latent, f64)> {
+    let ln_z = prepared.detectability.max(f64::MIN_POSITIVE).ln();
+    let mut states: Vec<(Latent, f64)> = stock
+        .scene
+        .amount
+        .weights()
+        .iter()
+        .enumerate()
+        .map(|(amount, w)| (Latent { amount, shifts: Vec::new() }, w.ln() - ln_z))
+        .collect();
+    for shift in &prepared.shifts {
+        states = states
+            .iter()
+            .flat_map(|(latent, ln)| {
+                shift.weights().iter().enumerate().map(move |(b, w)| {
+                    let mut next = latent.clone();
+                    next.shifts.push(b);
+                    (next, ln + w.ln())
+                })
+            })
+            .collect();
+    }
+    states
+}
+
+fn positions<T>(items: &[T], keep: impl Fn(&T) -> bool) -> Vec<usize> {
+    items.iter().enumerate().filter(|(_, i)| keep(i)).map(|(p, _)| p).collect()
+}
+
+fn peak(slice: &Slice) -> f64 {
+    slice.iter().flatten().copied().fold(f64::NEG_INFINITY, f64::max)
+}
+
+fn add(to: &mut Slice, from: &Slice) {
+    combine(to, from, |a, b| a + b);
+}
+
+fn subtract(from: &mut Slice, what: &Slice) {
+    combine(from, what, |a, b| a - b);
+}
+
+fn combine(to: &mut Slice, with: &Slice, op: impl Fn(f64, f64) -> f64) {
+    for (a, b) in to.iter_mut().zip(with) {
+        for l in 0..LANES {
+            a[l] = op(a[l], b[l]);
+        }
+    }
+}

@@ -1,0 +1,227 @@
+//! Best-first search over compositions, with a bound on everything not evaluated.
+//!
+//! Without blends L(S ∪ s) ≤ L(S)·L(s) for every state of the nuisances, because each joint
+//! matching restricts to two. So W(S ∪ s) ≤ W(S)·max BF_s·odds_s, and a composition can be left
+//! unevaluated when that is small. What adding s gained elsewhere bounds what it can gain here:
+//! the more substances compete for the readings, the less another one adds.
+
+use super::assembly::{Latent, Stock};
+use super::composition::{Weighed, ln_total, middle, weigh};
+use super::density::ln_sum_exp;
+use super::matching::LANES;
+use rayon::prelude::*;
+
+/// Compositions that were evaluated, and the bound on the rest.
+#[derive(Debug)]
+pub struct Found {
+    /// (composition, ln of evidence times prior odds), best first.
+    pub ranked: Vec<(Weighed, f64)>,
+    /// Bound on the mass of everything not evaluated, relative to what was.
+    pub bound: f64,
+}
+
+/// Nats allowed for what the bound does not prove: amounts shifting when substances are added.
+const AMOUNT_MARGIN: f64 = 0.7;
+/// Nats allowed per chain of blending lines, where the bound does not hold.
+const CHAIN_MARGIN: f64 = 1.0;
+/// Most nats allowed for chains together.
+const CHAIN_MARGIN_MOST: f64 = 4.0;
+/// Shift nodes further than this below the best do not bound gains.
+const RELEVANT_LN: f64 = -8.0;
+/// Compositions evaluated per round, whatever the number of threads.
+const BATCH: usize = 4;
+
+struct Node {
+    /// Positions in `Search::order`, ascending.
+    places: Vec<usize>,
+    weighed: Weighed,
+    ln_weight: f64,
+    /// Bound on ln of the factor that adding each candidate can bring.
+    gain: Vec<f64>,
+    /// Whether the child by each candidate has been evaluated.
+    done: Vec<bool>,
+}
+
+/// Searches all compositions of the candidates.
+pub fn search(stock: &Stock, ln_odds: &[f64]) -> Found {
+    let singles: Vec<Weighed> = (0..stock.prepared.len())
+        .into_par_iter()
+        .map(|c| weigh(stock, &[c], &[middle(stock, c)], true))
+        .collect();
+    let mut order: Vec<(f64, usize)> = singles
+        .iter()
+        .enumerate()
+        .map(|(c, w)| (best_node(w) + ln_odds[c], c))
+        .filter(|(gain, _)| gain.is_finite())
+        .collect();
+    order.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1)));
+    Search { stock, ln_odds, singles, order, nodes: Vec::new() }.run()
+}
+
+/// max over shift nodes and lanes of ln E*.
+fn best_node(weighed: &Weighed) -> f64 {
+    weighed.nodes.iter().flatten().copied().fold(f64::NEG_INFINITY, f64::max)
+}
+
+struct Search<'s, 'a> {
+    stock: &'s Stock<'a>,
+    ln_odds: &'s [f64],
+    singles: Vec<Weighed>,
+    /// (bound on ln gain, candidate), best first.
+    order: Vec<(f64, usize)>,
+    nodes: Vec<Node>,
+}
+
+impl Search<'_, '_> {
+    fn run(mut self) -> Found {
+        let empty = weigh(self.stock, &[], &[], true);
+        let first: Vec<f64> = self.order.iter().map(|(gain, _)| *gain).collect();
+        self.insert(Vec::new(), empty, first);
+        let settings = self.stock.scene.settings;
+        let mut bound = f64::INFINITY;
+        while self.nodes.len() < settings.search_limit {
+            let open = self.open_children();
+            bound = self.bound(&open);
+            if bound < settings.search_tolerance {
+                break;
+            }
+            self.evaluate(&open);
+        }
+        if self.nodes.len() >= settings.search_limit {
+            bound = self.bound(&self.open_children());
+        }
+        let mut ranked: Vec<(Weighed, f64)> = self.nodes.into_iter().map(|n| (n.weighed, n.ln_weight)).collect();
+        ranked.sort_by(|a, b| b.1.total_cmp(&a.1).then_with(|| a.0.members.cmp(&b.0.members)));
+        Found { ranked, bound: if bound.is_finite() { bound } else { 0.0 } }
+    }
+
+    /// (bound on ln mass of the child and all below it, node, candidate place), best first.
+    fn open_children(&self) -> Vec<(f64, usize, usize)> {
+        let mut open = Vec::new();
+        for (n, node) in self.nodes.iter().enumerate() {
+            if node.ln_weight == f64::NEG_INFINITY {
+                continue;
+            }
+            let mut below = 0.0;
+            let first = node.places.last().map_or(0, |p| p + 1);
+            for t in (first..self.order.len()).rev() {
+                let gain = node.gain[t];
+                if !node.done[t] {
+                    open.push((node.ln_weight + gain + below, n, t));
+                }
+                below += gain.exp().ln_1p().max(if gain > 30.0 { gain } else { 0.0 });
+            }
+        }
+        open.sort_by(|a, b| b.0.total_cmp(&a.0).then((a.1, a.2).cmp(&(b.1, b.2))));
+        open
+    }
+
+    fn bound(&self, open: &[(f64, usize, usize)]) -> f64 {
+        let left: Vec<f64> = open.iter().map(|o| o.0).collect();
+        let have: Vec<f64> = self.nodes.iter().map(|n| n.ln_weight).collect();
+        (ln_sum_exp(&left) - ln_sum_exp(&have)).exp()
+    }
+
+    fn evaluate(&mut self, open: &[(f64, usize, usize)]) {
+        let chosen: Vec<(Vec<usize>, Vec<f64>, Vec<usize>, Vec<Latent>)> = open
+            .iter()
+            .take(BATCH)
+            .map(|(_, n, t)| {
+                let node = &self.nodes[*n];
+                let mut places = node.places.clone();
+                places.push(*t);
+                let (members, start) = self.start(&node.weighed, self.order[*t].1);
+                (places, node.gain.clone(), members, start)
+            })
+            .collect();
+        let weighed: Vec<Weighed> = chosen
+            .par_iter()
+            .map(|(places, _, members, start)| {
+                if places.len() == 1 {
+                    self.singles[members[0]].clone()
+                } else {
+                    weigh(self.stock, members, start, true)
+                }
+            })
+            .collect();
+        for (_, n, t) in open.iter().take(BATCH) {
+            self.nodes[*n].done[*t] = true;
+        }
+        for ((places, gain, _, _), weighed) in chosen.into_iter().zip(weighed) {
+            self.insert(places, weighed, gain);
+        }
+    }
+
+    /// Members in ascending order with the states to begin from: the parent's mode and the
+    /// newcomer's own.
+    fn start(&self, parent: &Weighed, newcomer: usize) -> (Vec<usize>, Vec<Latent>) {
+        let mut pairs: Vec<(usize, Latent)> = parent.members.iter().copied().zip(parent.mode.iter().cloned()).collect();
+        let own = self.singles[newcomer].mode.first().cloned();
+        pairs.push((newcomer, own.unwrap_or_else(|| middle(self.stock, newcomer))));
+        pairs.sort_by_key(|(c, _)| *c);
+        pairs.into_iter().unzip()
+    }
+
+    fn insert(&mut self, places: Vec<usize>, weighed: Weighed, mut gain: Vec<f64>) {
+        let ln_weight = weighed.ln_evidence + places.iter().map(|p| self.ln_odds[self.order[*p].1]).sum::<f64>();
+        // What is known of any evaluated part of this composition holds here too.
+        for node in &self.nodes {
+            if subset(&node.places, &places) {
+                for (mine, theirs) in gain.iter_mut().zip(&node.gain) {
+                    *mine = mine.min(*theirs);
+                }
+            }
+        }
+        let done = vec![false; self.order.len()];
+        self.nodes.push(Node { places, weighed, ln_weight, gain, done });
+        self.learn(self.nodes.len() - 1);
+    }
+
+    /// What each member gained over an evaluated composition without it bounds what it can gain
+    /// over any larger one.
+    fn learn(&mut self, newest: usize) {
+        let places = self.nodes[newest].places.clone();
+        for x in &places {
+            let rest: Vec<usize> = places.iter().copied().filter(|p| p != x).collect();
+            let Some(base) = self.nodes.iter().position(|n| n.places == rest) else {
+                continue;
+            };
+            let Some(gained) = self.gained(base, newest) else {
+                continue;
+            };
+            let new = &self.nodes[newest].weighed;
+            let chains = new.chains.saturating_sub(self.nodes[base].weighed.chains) as f64;
+            let margin = AMOUNT_MARGIN + (CHAIN_MARGIN * chains).min(CHAIN_MARGIN_MOST);
+            let limit = gained + self.ln_odds[self.order[*x].1] + margin;
+            for node in &mut self.nodes {
+                if subset(&rest, &node.places) {
+                    node.gain[*x] = node.gain[*x].min(limit);
+                }
+            }
+        }
+    }
+
+    /// Largest ln E*(with) − ln E*(base) over the shift nodes and lanes that matter to `base`.
+    fn gained(&self, base: usize, with: usize) -> Option<f64> {
+        let (base, with) = (&self.nodes[base].weighed, &self.nodes[with].weighed);
+        if base.ln_evidence == f64::NEG_INFINITY {
+            return None;
+        }
+        let scene = &self.stock.scene;
+        let total = ln_total(self.stock, &base.nodes);
+        let mut most = f64::NEG_INFINITY;
+        for ((b, w), weight) in base.nodes.iter().zip(&with.nodes).zip(scene.offset.weights()) {
+            for l in 0..LANES {
+                let mass = b[l] + weight.ln() + self.stock.lane_ln_weight[l] - total;
+                if mass > RELEVANT_LN {
+                    most = most.max(w[l] - b[l]);
+                }
+            }
+        }
+        Some(most)
+    }
+}
+
+fn subset(small: &[usize], large: &[usize]) -> bool {
+    small.iter().all(|x| large.binary_search(x).is_ok())
+}
