@@ -23,22 +23,33 @@ pub struct StoreError {
 /// # Errors
 /// If the system does not let it be written.
 pub fn write_whole(path: &Path, content: &[u8]) -> Result<(), StoreError> {
-    let failed = |source| StoreError { path: path.to_owned(), source };
+    let failed = |source| StoreError {
+        path: path.to_owned(),
+        source,
+    };
     match fs::metadata(path) {
         Ok(known) if !known.is_file() => write_into(path, content).map_err(failed),
         // The target of a link takes the new content; a path that cannot be followed is new.
         Ok(_) => replace(&fs::canonicalize(path).map_err(failed)?, content).map_err(failed),
-        Err(error) if error.kind() == io::ErrorKind::NotFound => replace(path, content).map_err(failed),
+        Err(error) if error.kind() == io::ErrorKind::NotFound => {
+            replace(path, content).map_err(failed)
+        }
         Err(error) => Err(failed(error)),
     }
 }
 
 fn write_into(path: &Path, content: &[u8]) -> io::Result<()> {
-    OpenOptions::new().write(true).open(path)?.write_all(content)
+    OpenOptions::new()
+        .write(true)
+        .open(path)?
+        .write_all(content)
 }
 
 fn replace(path: &Path, content: &[u8]) -> io::Result<()> {
-    let folder = path.parent().filter(|folder| !folder.as_os_str().is_empty()).unwrap_or(Path::new("."));
+    let folder = path
+        .parent()
+        .filter(|folder| !folder.as_os_str().is_empty())
+        .unwrap_or(Path::new("."));
     let mut file = beside(path, folder)?;
     file.write_all(content)?;
     file.as_file().sync_all()?;
@@ -64,7 +75,9 @@ fn beside(path: &Path, folder: &Path) -> io::Result<NamedTempFile> {
 fn new_file(builder: &mut tempfile::Builder, folder: &Path) -> io::Result<NamedTempFile> {
     use std::os::unix::fs::PermissionsExt;
     // As for any new file; the mask of the user takes away from it.
-    builder.permissions(fs::Permissions::from_mode(0o666)).tempfile_in(folder)
+    builder
+        .permissions(fs::Permissions::from_mode(0o666))
+        .tempfile_in(folder)
 }
 
 #[cfg(not(unix))]
@@ -95,7 +108,10 @@ mod tests {
         let path = folder.path().join("none").join("report.txt");
         let error = write_whole(&path, b"x").err().ok_or("was written")?;
         assert!(error.to_string().contains("report.txt"), "{error}");
-        assert!(write_whole(folder.path(), b"x").is_err(), "a folder was written to");
+        assert!(
+            write_whole(folder.path(), b"x").is_err(),
+            "a folder was written to"
+        );
         Ok(())
     }
 

@@ -50,12 +50,17 @@ impl Failure {
     /// The exit status it calls for.
     pub fn exit(&self) -> Exit {
         match self {
-            Self::Usage(_) | Self::Shortlist { from_flags: true, .. } => Exit::Usage,
+            Self::Usage(_)
+            | Self::Shortlist {
+                from_flags: true, ..
+            } => Exit::Usage,
             // A fault of the flags names no file.
-            Self::Setup(error) if error.faults.iter().all(|fault| fault.input.is_none()) => Exit::Usage,
-            Self::Setup(_) | Self::Shortlist { .. } | Self::Library(LibraryError::Faulty { .. }) => {
-                Exit::BadData
+            Self::Setup(error) if error.faults.iter().all(|fault| fault.input.is_none()) => {
+                Exit::Usage
             }
+            Self::Setup(_)
+            | Self::Shortlist { .. }
+            | Self::Library(LibraryError::Faulty { .. }) => Exit::BadData,
             Self::Input { .. } | Self::Library(LibraryError::Unreadable { .. }) => Exit::NoInput,
             Self::Store(_) | Self::Print(_) => Exit::NoOutput,
             Self::Json(_) => Exit::Internal,

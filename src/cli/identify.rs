@@ -35,13 +35,23 @@ pub(super) struct IdentifyOptions {
 pub(super) fn run(options: &IdentifyOptions) -> Result<Exit, Failure> {
     let setup = options.setup.resolve(&options.library)?;
     let library = options.library.load(&setup)?;
-    let shortlist = shortlist(&library, &setup)
-        .map_err(|error| Failure::Shortlist { error, from_flags: options.setup.names_substances() })?;
-    let Inputs { tables, mut refused } = read_inputs(&options.files)?;
+    let shortlist = shortlist(&library, &setup).map_err(|error| Failure::Shortlist {
+        error,
+        from_flags: options.setup.names_substances(),
+    })?;
+    let Inputs {
+        tables,
+        mut refused,
+    } = read_inputs(&options.files)?;
 
     let samples: Vec<(&str, &Sample)> = tables
         .iter()
-        .flat_map(|table| table.samples.iter().map(|sample| (table.input.as_str(), sample)))
+        .flat_map(|table| {
+            table
+                .samples
+                .iter()
+                .map(|sample| (table.input.as_str(), sample))
+        })
         .collect();
     let (verdicts, not_reduced) = identify_all(&library, &setup, &shortlist, &samples);
     refused.extend(not_reduced);
@@ -53,14 +63,24 @@ pub(super) fn run(options: &IdentifyOptions) -> Result<Exit, Failure> {
         verdicts: &verdicts,
         refused: &refused,
     });
-    let detail = if options.output.quiet { Detail::Answers } else { Detail::Full };
+    let detail = if options.output.quiet {
+        Detail::Answers
+    } else {
+        Detail::Full
+    };
     options.output.write(&match options.output.format {
         Format::Text => identify_text(&view, detail),
         Format::Json => identify_json(&view)?,
     })?;
-    let decided = verdicts.iter().map(|(_, verdict)| Exit::of(verdict.decision)).max();
+    let decided = verdicts
+        .iter()
+        .map(|(_, verdict)| Exit::of(verdict.decision))
+        .max();
     let refusal = (!refused.is_empty()).then_some(Exit::BadData);
-    Ok(decided.max(refusal).unwrap_or(Exit::BadData).or_zero(options.exit_zero))
+    Ok(decided
+        .max(refusal)
+        .unwrap_or(Exit::BadData)
+        .or_zero(options.exit_zero))
 }
 
 /// Identifies samples side by side; verdicts come in the order of the samples.
@@ -70,12 +90,12 @@ fn identify_all(
     shortlist: &Shortlist,
     samples: &[(&str, &Sample)],
 ) -> (Vec<(String, Verdict)>, Vec<Refusal>) {
-    let outcomes: Vec<Result<(String, Verdict), Refusal>> = samples
+    let outcomes: Vec<Result<(String, Verdict), Box<Refusal>>> = samples
         .par_iter()
         .map(|&(input, sample)| {
             identify_sample(library, setup, shortlist, sample)
                 .map(|identified| (input.to_owned(), identified.verdict))
-                .map_err(|error| refusal(input, sample, &error))
+                .map_err(|error| Box::new(refusal(input, sample, &error)))
         })
         .collect();
     let mut verdicts = Vec::new();
@@ -83,7 +103,7 @@ fn identify_all(
     for outcome in outcomes {
         match outcome {
             Ok(verdict) => verdicts.push(verdict),
-            Err(refusal) => refused.push(refusal),
+            Err(refusal) => refused.push(*refusal),
         }
     }
     (verdicts, refused)

@@ -16,7 +16,9 @@ pub(super) struct Inputs {
 /// likelier a slip of the pen than a gap to be worked around.
 pub(super) fn read_inputs(names: &[String]) -> Result<Inputs, Failure> {
     if names.iter().filter(|name| *name == "-").count() > 1 {
-        return Err(Failure::Usage("standard input can be read only once (name - only once)".to_owned()));
+        return Err(Failure::Usage(
+            "standard input can be read only once (name - only once)".to_owned(),
+        ));
     }
     let mut inputs = Inputs::default();
     for name in names {
@@ -34,5 +36,8 @@ fn read_bytes(name: &str) -> Result<Vec<u8>, Failure> {
     } else {
         fs::read(name)
     };
-    read.map_err(|source| Failure::Input { input: name.to_owned(), source })
+    read.map_err(|source| Failure::Input {
+        input: name.to_owned(),
+        source,
+    })
 }

@@ -81,8 +81,13 @@ impl SetupOptions {
     /// Flags over file over preset.
     pub fn resolve(&self, library: &LibraryOptions) -> Result<Setup, Failure> {
         let file = self.setup.as_deref().map(read_file).transpose()?;
-        let response = self.response.as_deref().map(|name| NamedResponse::read(name, Path::new("")));
-        let response = response.transpose().map_err(|error| Failure::Usage(format!("--response: {error}")))?;
+        let response = self
+            .response
+            .as_deref()
+            .map(|name| NamedResponse::read(name, Path::new("")));
+        let response = response
+            .transpose()
+            .map_err(|error| Failure::Usage(format!("--response: {error}")))?;
         let flags = SetupOverrides {
             instrument: self.instrument,
             range_nm: self.range,
@@ -112,8 +117,17 @@ impl SetupOptions {
 /// A set-up file that is not there is a missing input, not a faulty one.
 fn read_file(path: &Path) -> Result<crate::setup::SetupFile, Failure> {
     std::fs::metadata(path)
-        .and_then(|known| if known.is_dir() { Err(io::ErrorKind::IsADirectory.into()) } else { Ok(()) })
-        .map_err(|source| Failure::Input { input: path.display().to_string(), source })?;
+        .and_then(|known| {
+            if known.is_dir() {
+                Err(io::ErrorKind::IsADirectory.into())
+            } else {
+                Ok(())
+            }
+        })
+        .map_err(|source| Failure::Input {
+            input: path.display().to_string(),
+            source,
+        })?;
     Ok(read_setup(path)?)
 }
 
@@ -154,8 +168,15 @@ fn source(text: &str) -> Result<SourceKind, String> {
 
 /// `400:700`, nm.
 fn stretch(text: &str) -> Result<[f64; 2], String> {
-    let number = |part: &str| part.trim().parse::<f64>().ok().filter(|number| number.is_finite());
-    let ends = text.split_once(':').and_then(|(from, to)| Some([number(from)?, number(to)?]));
+    let number = |part: &str| {
+        part.trim()
+            .parse::<f64>()
+            .ok()
+            .filter(|number| number.is_finite())
+    };
+    let ends = text
+        .split_once(':')
+        .and_then(|(from, to)| Some([number(from)?, number(to)?]));
     match ends {
         Some([from, to]) if from < to => Ok([from, to]),
         Some(_) => Err("the first end must be the smaller".to_owned()),
@@ -171,7 +192,9 @@ mod tests {
     fn stretches_have_two_ends_in_order() {
         assert_eq!(stretch("400:700"), Ok([400.0, 700.0]));
         assert_eq!(stretch(" 400.5 : 700 "), Ok([400.5, 700.0]));
-        for wrong in ["", "400", "400:", "400-700", "700:400", "400:400", "nan:700", "400:inf", "1:2:3"] {
+        for wrong in [
+            "", "400", "400:", "400-700", "700:400", "400:400", "nan:700", "400:inf", "1:2:3",
+        ] {
             assert!(stretch(wrong).is_err(), "{wrong:?} was taken");
         }
     }

@@ -1,17 +1,17 @@
 //! From verdicts to views: names, numbers with a fixed number of digits, and null for the unknown.
 
 use super::view::{
-    CauseView, CompositionView, IdentifyView, InputView, LaneView, LibraryView, MarkView, MissingLineView,
-    NextReadingView, PosteriorView, ReadingView, RefusalView, SampleView, SetAsideView, SubstanceView,
-    WarningView,
+    CauseView, CompositionView, IdentifyView, InputView, LaneView, LibraryView, MarkView,
+    MissingLineView, NextReadingView, PosteriorView, ReadingView, RefusalView, SampleView,
+    SetAsideView, SubstanceView, WarningView,
 };
 use crate::library::Library;
 use crate::reading::{Refusal, Table, TableRemark};
 use crate::reduction::{AsideReason, SetAside};
 use crate::setup::Setup;
 use crate::verdict::{
-    CauseFinding, Lane, Mark, MissingLine, NextReading, RankedComposition, ReadingFinding, SubstanceFinding,
-    SubstanceName, Verdict, Warning,
+    CauseFinding, Lane, Mark, MissingLine, NextReading, RankedComposition, ReadingFinding,
+    SubstanceFinding, SubstanceName, Verdict, Warning,
 };
 
 /// Everything a report of `identify` is made of.
@@ -41,15 +41,23 @@ pub fn identify_view(run: &IdentifyRun) -> IdentifyView {
         },
         setup: run.setup.view(),
         setup_described: run.setup.describe(),
-        samples: run.verdicts.iter().map(|(input, verdict)| sample(input, verdict)).collect(),
+        samples: run
+            .verdicts
+            .iter()
+            .map(|(input, verdict)| sample(input, verdict))
+            .collect(),
         refused: run.refused.iter().map(refusal).collect(),
     }
 }
 
 fn input(table: &Table) -> InputView {
     let remarks = table.remarks.iter().map(|remark| match remark {
-        TableRemark::UnknownColumn { column } => Warning::UnknownColumn { column: column.clone() },
-        TableRemark::UnusedColumn { column } => Warning::UnusedColumn { column: column.clone() },
+        TableRemark::UnknownColumn { column } => Warning::UnknownColumn {
+            column: column.clone(),
+        },
+        TableRemark::UnusedColumn { column } => Warning::UnusedColumn {
+            column: column.clone(),
+        },
     });
     InputView {
         path: table.input.clone(),
@@ -73,7 +81,11 @@ fn sample(input: &str, verdict: &Verdict) -> SampleView {
         composed_name: verdict.composed.clone(),
         compositions: ranked(&verdict.compositions),
         compositions_without_ubiquitous: ranked(&verdict.without_ubiquitous),
-        either_or: verdict.either_or.iter().map(|group| ids(&group.substances)).collect(),
+        either_or: verdict
+            .either_or
+            .iter()
+            .map(|group| ids(&group.substances))
+            .collect(),
         untested_mass_bound: probability(verdict.untested_mass_bound),
         substances: verdict.substances.iter().map(substance).collect(),
         readings: verdict.readings.iter().map(reading).collect(),
@@ -92,16 +104,21 @@ fn sample(input: &str, verdict: &Verdict) -> SampleView {
 }
 
 fn ids(substances: &[SubstanceName]) -> Vec<String> {
-    substances.iter().map(|substance| substance.id.clone()).collect()
+    substances
+        .iter()
+        .map(|substance| substance.id.clone())
+        .collect()
 }
 
 fn ranked(compositions: &[RankedComposition]) -> Vec<CompositionView> {
     let view = |(index, composition): (usize, &RankedComposition)| CompositionView {
         rank: index + 1,
         substances: ids(&composition.substances),
-        names: composition.substances.iter().map(|substance| substance.name.clone()).collect(),
+        described: composition.described.clone(),
         posterior: probability(composition.posterior),
-        log_evidence: composition.log_evidence.and_then(|value| decimals(value, 4)),
+        log_evidence: composition
+            .log_evidence
+            .and_then(|value| decimals(value, 4)),
     };
     compositions.iter().enumerate().map(view).collect()
 }
@@ -188,7 +205,11 @@ fn set_aside(aside: &SetAside) -> SetAsideView {
 }
 
 fn warning(warning: &Warning) -> WarningView {
-    WarningView { code: warning.code(), message: warning.message(), next_step: warning.next_step() }
+    WarningView {
+        code: warning.code(),
+        message: warning.message(),
+        next_step: warning.next_step(),
+    }
 }
 
 fn next_reading(next: &NextReading) -> NextReadingView {
@@ -223,7 +244,11 @@ fn decimals(value: f64, decimals: i32) -> Option<f64> {
 /// smaller, and no more than twelve decimals: near certainty the complement is what counts.
 fn probability(p: f64) -> Option<f64> {
     let smaller = p.min(1.0 - p);
-    let digits = if smaller > 0.0 { 3.0 - smaller.log10().floor() } else { 12.0 };
+    let digits = if smaller > 0.0 {
+        3.0 - smaller.log10().floor()
+    } else {
+        12.0
+    };
     decimals(p, digits.clamp(4.0, 12.0) as i32)
 }
 
@@ -242,7 +267,7 @@ mod tests {
     #[test]
     fn probabilities_keep_their_doubt() {
         assert_eq!(probability(0.123_456), Some(0.1235));
-        assert_eq!(probability(0.999_999_923_44), Some(0.999_999_923_4));
+        assert_eq!(probability(0.999_999_923_44), Some(0.999_999_923_44));
         assert_eq!(probability(0.000_012_345), Some(0.000_012_35));
         assert_eq!(probability(1.0), Some(1.0));
         assert_eq!(probability(0.0), Some(0.0));

@@ -31,7 +31,10 @@ mod tests {
     #[test]
     fn nothing_acts() {
         assert_eq!(plain("Löwe, 589 nm"), "Löwe, 589 nm");
-        assert_eq!(plain("a\u{1b}[31mred\u{7}\n"), "a\\u{1b}[31mred\\u{7}\\u{a}");
+        assert_eq!(
+            plain("a\u{1b}[31mred\u{7}\n"),
+            "a\\u{1b}[31mred\\u{7}\\u{a}"
+        );
         assert_eq!(plain("abc\u{202e}fed\u{2066}"), "abc\\u{202e}fed\\u{2066}");
         assert_eq!(plain("\u{9b}31m"), "\\u{9b}31m");
     }

@@ -15,9 +15,9 @@ pub use escape::plain;
 pub use json::identify_json;
 pub use text::{Detail, identify_text};
 pub use view::{
-    CauseView, CompositionView, IdentifyView, InputView, LaneView, LibraryView, MarkView, MissingLineView,
-    NextReadingView, PosteriorView, ReadingView, RefusalView, SampleView, SetAsideView, SubstanceView,
-    WarningView,
+    CauseView, CompositionView, IdentifyView, InputView, LaneView, LibraryView, MarkView,
+    MissingLineView, NextReadingView, PosteriorView, ReadingView, RefusalView, SampleView,
+    SetAsideView, SubstanceView, WarningView,
 };
 
 #[cfg(test)]

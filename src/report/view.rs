@@ -110,8 +110,8 @@ pub struct CompositionView {
     pub rank: usize,
     /// Ids of its members; empty for none of the weighed substances.
     pub substances: Vec<String>,
-    /// Their names.
-    pub names: Vec<String>,
+    /// The same in words.
+    pub described: String,
     /// Posterior probability.
     pub posterior: Option<f64>,
     /// ln of the evidence, nats; null where it is zero or does not apply.

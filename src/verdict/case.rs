@@ -5,7 +5,7 @@
 use super::thresholds::{
     COMPOSITION_KEPT_FROM, COMPOSITIONS_KEPT_MAX, COMPOSITIONS_KEPT_MIN, NAMED_FROM_PRESENCE,
 };
-use super::{RankedComposition, SubstanceFinding, SubstanceName, Weighed};
+use super::{RankedComposition, SubstanceFinding, SubstanceName, Weighed, sentence};
 use crate::evidence::{CandidateFeature, Inference, Presence};
 use crate::library::{Emitter, Feature, Library, PriorClass, Substance};
 use crate::reduction::ReducedSample;
@@ -26,7 +26,9 @@ pub(super) struct Case<'a> {
 impl<'a> Case<'a> {
     /// The substance behind a candidate.
     pub fn substance(&self, candidate: usize) -> Option<&'a Substance> {
-        self.library.substances.get(self.weighed.get(candidate)?.substance)
+        self.library
+            .substances
+            .get(self.weighed.get(candidate)?.substance)
     }
 
     /// A candidate as reports name it.
@@ -41,7 +43,10 @@ impl<'a> Case<'a> {
 
     /// Several candidates as reports name them.
     pub fn names(&self, candidates: &[usize]) -> Vec<SubstanceName> {
-        candidates.iter().filter_map(|&candidate| self.name(candidate)).collect()
+        candidates
+            .iter()
+            .filter_map(|&candidate| self.name(candidate))
+            .collect()
     }
 
     /// Whether a candidate is expected on nearly every sample read in this kind of source.
@@ -61,11 +66,21 @@ impl<'a> Case<'a> {
     /// Features of a candidate, each with its strength in decades relative to the strongest one
     /// that the set-up can see.
     pub fn relative_features(&self, candidate: usize) -> Vec<(&'a CandidateFeature, f64)> {
-        let features = self.weighed.get(candidate).map_or(&[][..], |weighed| &weighed.candidate.features);
-        let seen: Vec<&CandidateFeature> =
-            features.iter().filter(|feature| self.is_visible(feature.wavelength_nm)).collect();
-        let strongest = seen.iter().map(|feature| feature.level_dex).fold(f64::NEG_INFINITY, f64::max);
-        seen.into_iter().map(|feature| (feature, feature.level_dex - strongest)).collect()
+        let features = self
+            .weighed
+            .get(candidate)
+            .map_or(&[][..], |weighed| &weighed.candidate.features);
+        let seen: Vec<&CandidateFeature> = features
+            .iter()
+            .filter(|feature| self.is_visible(feature.wavelength_nm))
+            .collect();
+        let strongest = seen
+            .iter()
+            .map(|feature| feature.level_dex)
+            .fold(f64::NEG_INFINITY, f64::max);
+        seen.into_iter()
+            .map(|feature| (feature, feature.level_dex - strongest))
+            .collect()
     }
 
     /// Whether a wavelength (nm) lies in the range and outside blind stretches.
@@ -81,7 +96,10 @@ impl<'a> Case<'a> {
 
     /// Members of the leading composition; none if nothing was weighed.
     pub fn leader(&self) -> &'a [usize] {
-        self.inference.compositions.first().map_or(&[], |leader| &leader.members)
+        self.inference
+            .compositions
+            .first()
+            .map_or(&[], |leader| &leader.members)
     }
 
     /// Candidates that the answer speaks of: the leader's members and whatever is likely enough
@@ -92,22 +110,32 @@ impl<'a> Case<'a> {
             .filter(|candidate| !leader.contains(candidate))
             .filter(|&candidate| self.presence_of(candidate) > NAMED_FROM_PRESENCE)
             .collect();
-        others.sort_by(|&a, &b| self.presence_of(b).total_cmp(&self.presence_of(a)).then(a.cmp(&b)));
+        others.sort_by(|&a, &b| {
+            self.presence_of(b)
+                .total_cmp(&self.presence_of(a))
+                .then(a.cmp(&b))
+        });
         leader.iter().copied().chain(others).collect()
     }
 
     /// Chance that a candidate caused at least one reading; zero for one that was not weighed.
     pub fn presence_of(&self, candidate: usize) -> f64 {
-        self.presence(candidate).map_or(0.0, |presence| presence.detected)
+        self.presence(candidate)
+            .map_or(0.0, |presence| presence.detected)
     }
 
     /// The compositions worth reporting.
     pub fn ranking(&self) -> Vec<RankedComposition> {
-        let ranked = self.inference.compositions.iter().map(|composition| RankedComposition {
-            substances: self.names(&composition.members),
-            posterior: composition.posterior,
-            log_evidence: composition.log_evidence.filter(|value| value.is_finite()),
-        });
+        let ranked = self
+            .inference
+            .compositions
+            .iter()
+            .map(|composition| RankedComposition {
+                substances: self.names(&composition.members),
+                described: sentence::composition(self, &composition.members),
+                posterior: composition.posterior,
+                log_evidence: composition.log_evidence.filter(|value| value.is_finite()),
+            });
         worth_reporting(ranked)
     }
 
@@ -116,11 +144,16 @@ impl<'a> Case<'a> {
         if !(0..self.weighed.len()).any(|candidate| self.is_ubiquitous(candidate)) {
             return Vec::new();
         }
-        let ranked = self.inference.without_ubiquitous.iter().map(|(members, posterior)| RankedComposition {
-            substances: self.names(members),
-            posterior: *posterior,
-            log_evidence: None,
-        });
+        let ranked = self
+            .inference
+            .without_ubiquitous
+            .iter()
+            .map(|(members, posterior)| RankedComposition {
+                substances: self.names(members),
+                described: sentence::composition(self, members),
+                posterior: *posterior,
+                log_evidence: None,
+            });
         worth_reporting(ranked)
     }
 
@@ -139,7 +172,9 @@ impl<'a> Case<'a> {
             })
             .collect();
         findings.sort_by(|a, b| {
-            b.presence.total_cmp(&a.presence).then_with(|| a.substance.id.cmp(&b.substance.id))
+            b.presence
+                .total_cmp(&a.presence)
+                .then_with(|| a.substance.id.cmp(&b.substance.id))
         });
         findings
     }

@@ -6,14 +6,21 @@ use crate::library::SourceKind;
 /// The texts of the cautions, each once, in the order of the substances they belong to.
 pub(super) fn cautions(case: &Case) -> Vec<String> {
     let mut keys: Vec<&str> = Vec::new();
-    for substance in case.spoken_of().into_iter().filter_map(|candidate| case.substance(candidate)) {
+    for substance in case
+        .spoken_of()
+        .into_iter()
+        .filter_map(|candidate| case.substance(candidate))
+    {
         for key in &substance.cautions {
             if applies(key, case.setup.source()) && !keys.contains(&key.as_str()) {
                 keys.push(key);
             }
         }
     }
-    keys.into_iter().filter_map(|key| case.library.caution(key)).map(str::to_owned).collect()
+    keys.into_iter()
+        .filter_map(|key| case.library.caution(key))
+        .map(str::to_owned)
+        .collect()
 }
 
 /// A key that starts with the name of a source is for that source only.

@@ -32,10 +32,18 @@ impl Decision {
 /// was left unweighed; else `inconclusive`.
 pub(super) fn decide(case: &Case, group: &LeadingGroup, warnings: &[Warning]) -> Decision {
     if case.leader().is_empty() {
-        return if case.sample.readings.is_empty() { Decision::Inconclusive } else { Decision::Unexplained };
+        return if case.sample.readings.is_empty() {
+            Decision::Inconclusive
+        } else {
+            Decision::Unexplained
+        };
     }
     let capped = warnings.iter().any(Warning::caps_decision);
-    let settled = group.posterior >= DECISIVE_POSTERIOR
-        && case.inference.untested_mass_bound < UNTESTED_MASS;
-    if settled && !capped { Decision::Decisive } else { Decision::Inconclusive }
+    let settled =
+        group.posterior >= DECISIVE_POSTERIOR && case.inference.untested_mass_bound < UNTESTED_MASS;
+    if settled && !capped {
+        Decision::Decisive
+    } else {
+        Decision::Inconclusive
+    }
 }

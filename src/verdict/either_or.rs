@@ -16,12 +16,20 @@ pub(super) struct LeadingGroup {
 impl LeadingGroup {
     /// The groups by name.
     pub fn named(&self, case: &Case) -> Vec<EitherOr> {
-        self.swaps.iter().map(|swap| EitherOr { substances: case.names(swap) }).collect()
+        self.swaps
+            .iter()
+            .map(|swap| EitherOr {
+                substances: case.names(swap),
+            })
+            .collect()
     }
 
     /// A member of the leader with its alternatives, the member first.
     pub fn alternatives(&self, member: usize) -> Option<&[usize]> {
-        self.swaps.iter().find(|swap| swap.first() == Some(&member)).map(Vec::as_slice)
+        self.swaps
+            .iter()
+            .find(|swap| swap.first() == Some(&member))
+            .map(Vec::as_slice)
     }
 
     /// Names of a member and its alternatives, or of the member alone.
@@ -35,17 +43,30 @@ impl LeadingGroup {
 pub(super) fn leading_group(case: &Case) -> LeadingGroup {
     let mut compositions = case.inference.compositions.iter();
     let Some(leader) = compositions.next() else {
-        return LeadingGroup { swaps: Vec::new(), posterior: 0.0 };
+        return LeadingGroup {
+            swaps: Vec::new(),
+            posterior: 0.0,
+        };
     };
-    let mut group = LeadingGroup { swaps: Vec::new(), posterior: leader.posterior };
+    let mut group = LeadingGroup {
+        swaps: Vec::new(),
+        posterior: leader.posterior,
+    };
     for other in compositions {
-        let comparable = other.posterior > 0.0 && leader.posterior <= EITHER_OR_RATIO * other.posterior;
-        let Some((member, alternative)) = swapped(&leader.members, &other.members) else { continue };
+        let comparable =
+            other.posterior > 0.0 && leader.posterior <= EITHER_OR_RATIO * other.posterior;
+        let Some((member, alternative)) = swapped(&leader.members, &other.members) else {
+            continue;
+        };
         if !comparable || !explain_the_same(case, member, alternative) {
             continue;
         }
         group.posterior += other.posterior;
-        match group.swaps.iter_mut().find(|swap| swap.first() == Some(&member)) {
+        match group
+            .swaps
+            .iter_mut()
+            .find(|swap| swap.first() == Some(&member))
+        {
             Some(swap) => swap.push(alternative),
             None => group.swaps.push(vec![member, alternative]),
         }
@@ -73,12 +94,18 @@ fn explain_the_same(case: &Case, a: usize, b: usize) -> bool {
 fn readings_explained(case: &Case, candidate: usize) -> Vec<usize> {
     let fence = EXPLAINS_WHEN_PRESENT * case.presence_of(candidate);
     let causes_it = |reading: &crate::evidence::ReadingEvidence| {
-        let of_candidate = reading.causes.iter().filter(|cause| cause.candidate == candidate);
+        let of_candidate = reading
+            .causes
+            .iter()
+            .filter(|cause| cause.candidate == candidate);
         let probability: f64 = of_candidate.map(|cause| cause.probability).sum();
         probability > 0.0 && probability >= fence
     };
     let readings = case.inference.readings.iter().enumerate();
-    readings.filter(|(_, reading)| causes_it(reading)).map(|(index, _)| index).collect()
+    readings
+        .filter(|(_, reading)| causes_it(reading))
+        .map(|(index, _)| index)
+        .collect()
 }
 
 #[cfg(test)]

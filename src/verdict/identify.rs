@@ -34,18 +34,34 @@ pub fn identify_sample(
     let sample = reduce(sample, setup)?;
     let lineup = line_up(library, setup, shortlist, usual_order(&sample));
     let observations: Vec<Observation> = sample.readings.iter().map(observation).collect();
-    let candidates: Vec<Candidate> =
-        lineup.weighed.iter().map(|weighed| weighed.candidate.clone()).collect();
+    let candidates: Vec<Candidate> = lineup
+        .weighed
+        .iter()
+        .map(|weighed| weighed.candidate.clone())
+        .collect();
     let inference = infer(&observations, &conditions(setup, &sample), &candidates);
     let verdict = judge(library, setup, &sample, &lineup, &inference);
-    Ok(Identified { sample, lineup, inference, verdict })
+    Ok(Identified {
+        sample,
+        lineup,
+        inference,
+        verdict,
+    })
 }
 
 /// The order most readings were taken in, the lowest of several; 1 without readings.
 fn usual_order(sample: &ReducedSample) -> u32 {
-    let count = |order: u32| sample.readings.iter().filter(|reading| reading.order == order).count();
+    let count = |order: u32| {
+        sample
+            .readings
+            .iter()
+            .filter(|reading| reading.order == order)
+            .count()
+    };
     let orders = sample.readings.iter().map(|reading| reading.order);
-    orders.max_by_key(|&order| (count(order), std::cmp::Reverse(order))).unwrap_or(1)
+    orders
+        .max_by_key(|&order| (count(order), std::cmp::Reverse(order)))
+        .unwrap_or(1)
 }
 
 fn observation(reading: &ReducedReading) -> Observation {
@@ -68,5 +84,10 @@ fn conditions(setup: &Setup, sample: &ReducedSample) -> Conditions {
         dynamic_range_dex: sample.dynamic_range_dex,
         offset_nm: setup.common_shift_nm(),
         scale_relative: setup.scale_relative(),
+        splits_nm: sample
+            .splits
+            .iter()
+            .map(|&(left, right)| [left, right])
+            .collect(),
     }
 }

@@ -39,7 +39,10 @@ pub(super) fn lanes(case: &Case, readings: &[ReadingFinding]) -> Vec<Lane> {
     let spoken_of = case.spoken_of().into_iter();
     spoken_of
         .filter_map(|candidate| {
-            Some(Lane { substance: case.name(candidate)?, marks: marks(case, readings, candidate) })
+            Some(Lane {
+                substance: case.name(candidate)?,
+                marks: marks(case, readings, candidate),
+            })
         })
         .collect()
 }
@@ -48,22 +51,40 @@ fn marks(case: &Case, readings: &[ReadingFinding], candidate: usize) -> Vec<Lane
     let causes = readings.iter().filter_map(|reading| reading.cause.as_ref());
     let matched = causes.filter(|cause| cause.candidate == candidate);
     let mut marks: Vec<LaneMark> = matched
-        .map(|cause| LaneMark { wavelength_nm: cause.feature_nm, mark: Mark::Matched })
+        .map(|cause| LaneMark {
+            wavelength_nm: cause.feature_nm,
+            mark: Mark::Matched,
+        })
         .collect();
-    let missing = case.inference.missing.iter().filter(|missing| missing.candidate == candidate);
-    marks.extend(
-        missing.map(|missing| LaneMark { wavelength_nm: missing.wavelength_nm, mark: Mark::Missing }),
-    );
+    let missing = case
+        .inference
+        .missing
+        .iter()
+        .filter(|missing| missing.candidate == candidate);
+    marks.extend(missing.map(|missing| LaneMark {
+        wavelength_nm: missing.wavelength_nm,
+        mark: Mark::Missing,
+    }));
     // Features that merge into a marked one at this resolution are part of it.
     let taken: Vec<f64> = marks.iter().map(|mark| mark.wavelength_nm).collect();
     let resolution_nm = case.setup.resolution_nm();
-    let free = |nm: f64| taken.iter().all(|taken| (taken - nm).abs() >= resolution_nm);
-    let strong = case.relative_features(candidate).into_iter().filter(|(_, dex)| *dex >= -DRAWN_WITHIN_DEX);
+    let free = |nm: f64| {
+        taken
+            .iter()
+            .all(|taken| (taken - nm).abs() >= resolution_nm)
+    };
+    let strong = case
+        .relative_features(candidate)
+        .into_iter()
+        .filter(|(_, dex)| *dex >= -DRAWN_WITHIN_DEX);
     marks.extend(
         strong
             .map(|(feature, _)| feature.wavelength_nm)
             .filter(|&nm| free(nm))
-            .map(|wavelength_nm| LaneMark { wavelength_nm, mark: Mark::Listed }),
+            .map(|wavelength_nm| LaneMark {
+                wavelength_nm,
+                mark: Mark::Listed,
+            }),
     );
     marks.sort_by(|a, b| a.wavelength_nm.total_cmp(&b.wavelength_nm));
     marks

@@ -29,7 +29,9 @@ pub enum ShortlistError {
     #[error(transparent)]
     Name(#[from] NameError),
     /// Nothing to weigh.
-    #[error("no substance of the library shows in this kind of source (check --source and --candidates)")]
+    #[error(
+        "no substance of the library shows in this kind of source (check --source and --candidates)"
+    )]
     NothingToWeigh,
 }
 
@@ -81,8 +83,11 @@ pub fn shortlist(library: &Library, setup: &Setup) -> Result<Shortlist, Shortlis
             .select_list(name)
             .or_else(|not_a_list| library.select_named(&[name]).map_err(|_| not_a_list))?,
     };
-    let always: Vec<usize> =
-        setup.always().iter().map(|name| library.find(name)).collect::<Result<_, _>>()?;
+    let always: Vec<usize> = setup
+        .always()
+        .iter()
+        .map(|name| library.find(name))
+        .collect::<Result<_, _>>()?;
     let chosen = library.candidate_priors(setup.source(), &selection, &always);
     if chosen.is_empty() {
         return Err(ShortlistError::NothingToWeigh);
@@ -98,27 +103,48 @@ pub fn shortlist(library: &Library, setup: &Setup) -> Result<Shortlist, Shortlis
 
 /// Prepares the shortlist for readings taken in a diffraction order.
 pub fn line_up(library: &Library, setup: &Setup, shortlist: &Shortlist, order: u32) -> Lineup {
-    let mut lineup = Lineup { weighed: Vec::new(), not_excited: Vec::new() };
+    let mut lineup = Lineup {
+        weighed: Vec::new(),
+        not_excited: Vec::new(),
+    };
     for &(index, prior) in &shortlist.chosen {
         let asked_for = shortlist.asked_for.binary_search(&index).is_ok();
-        let Some(substance) = library.substances.get(index) else { continue };
+        let Some(substance) = library.substances.get(index) else {
+            continue;
+        };
         let (candidate, origins) = candidate(substance, setup, prior, order);
         if candidate.features.is_empty() {
             lineup.not_excited.extend(asked_for.then_some(index));
         } else {
-            lineup.weighed.push(Weighed { substance: index, asked_for, candidate, origins });
+            lineup.weighed.push(Weighed {
+                substance: index,
+                asked_for,
+                candidate,
+                origins,
+            });
         }
     }
     lineup
 }
 
-fn candidate(substance: &Substance, setup: &Setup, prior: f64, order: u32) -> (Candidate, Vec<Origin>) {
+fn candidate(
+    substance: &Substance,
+    setup: &Setup,
+    prior: f64,
+    order: u32,
+) -> (Candidate, Vec<Origin>) {
     let kind = setup.source().index();
-    let mut candidate =
-        Candidate { prior, shows: 0.0, emitter_spread_dex: Vec::new(), features: Vec::new() };
+    let mut candidate = Candidate {
+        prior,
+        shows: 0.0,
+        emitter_spread_dex: Vec::new(),
+        features: Vec::new(),
+    };
     let mut origins = Vec::new();
     for (emitter_index, emitter) in substance.emitters.iter().enumerate() {
-        let Some(excitation) = emitter.excitation.get(kind).and_then(Option::as_ref) else { continue };
+        let Some(excitation) = emitter.excitation.get(kind).and_then(Option::as_ref) else {
+            continue;
+        };
         let seen = emitter_features(emitter, setup, order, excitation.level_dex);
         if seen.is_empty() {
             continue;
@@ -127,9 +153,15 @@ fn candidate(substance: &Substance, setup: &Setup, prior: f64, order: u32) -> (C
         for (mut feature, feature_index, order) in seen {
             feature.emitter = candidate.emitter_spread_dex.len();
             candidate.features.push(feature);
-            origins.push(Origin { emitter: emitter_index, feature: feature_index, order });
+            origins.push(Origin {
+                emitter: emitter_index,
+                feature: feature_index,
+                order,
+            });
         }
-        candidate.emitter_spread_dex.push(excitation.level_spread_dex);
+        candidate
+            .emitter_spread_dex
+            .push(excitation.level_spread_dex);
     }
     (candidate, origins)
 }
@@ -144,7 +176,9 @@ fn emitter_features(
     let kind = setup.source().index();
     let mut seen = Vec::new();
     for (index, feature) in emitter.features.iter().enumerate() {
-        let Some(strength_dex) = feature.strength_dex.get(kind).copied().flatten() else { continue };
+        let Some(strength_dex) = feature.strength_dex.get(kind).copied().flatten() else {
+            continue;
+        };
         let wavelength_nm = feature.wavelength.nm();
         let response_dex = setup.response_dex(wavelength_nm);
         let own = CandidateFeature {
@@ -156,9 +190,17 @@ fn emitter_features(
             scatter_dex: feature.scatter_dex.hypot(LEAST_SCATTER_DEX),
         };
         // What the eye or the filter does not pass is not seen in any order.
-        let others = if response_dex > UNSEEN_DEX { other_orders(setup, &own, order) } else { Vec::new() };
+        let others = if response_dex > UNSEEN_DEX {
+            other_orders(setup, &own, order)
+        } else {
+            Vec::new()
+        };
         seen.push((own, index, order));
-        seen.extend(others.into_iter().map(|(feature, order)| (feature, index, order)));
+        seen.extend(
+            others
+                .into_iter()
+                .map(|(feature, order)| (feature, index, order)),
+        );
     }
     seen
 }
@@ -190,7 +232,10 @@ fn other_orders(setup: &Setup, own: &CandidateFeature, order: u32) -> Vec<(Candi
 
 /// Whether an instrument has diffraction orders.
 pub(super) fn is_grating(instrument: InstrumentKind) -> bool {
-    matches!(instrument, InstrumentKind::Goniometer | InstrumentKind::Camera | InstrumentKind::Ccd)
+    matches!(
+        instrument,
+        InstrumentKind::Goniometer | InstrumentKind::Camera | InstrumentKind::Ccd
+    )
 }
 
 fn form(form: Form) -> FeatureForm {

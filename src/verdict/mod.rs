@@ -49,6 +49,8 @@ pub struct SubstanceName {
 pub struct RankedComposition {
     /// Members in the order of the library; empty for "none of the weighed substances".
     pub substances: Vec<SubstanceName>,
+    /// The same in words: `strontium, with sodium`.
+    pub described: String,
     /// Posterior probability.
     pub posterior: f64,
     /// ln of the evidence against "every reading is clutter", nats; absent where it is zero.
@@ -133,8 +135,18 @@ pub fn judge(
     lineup: &Lineup,
     inference: &Inference,
 ) -> Verdict {
-    let Lineup { weighed, not_excited } = lineup;
-    let case = Case { library, setup, sample, weighed, not_excited, inference };
+    let Lineup {
+        weighed,
+        not_excited,
+    } = lineup;
+    let case = Case {
+        library,
+        setup,
+        sample,
+        weighed,
+        not_excited,
+        inference,
+    };
     let readings = readings::findings(&case);
     let group = either_or::leading_group(&case);
     let next_readings = next_reading::proposals(&case, &group);
@@ -165,5 +177,7 @@ pub fn judge(
     }
 }
 
+#[cfg(test)]
+pub(crate) mod fixture;
 #[cfg(test)]
 mod tests;

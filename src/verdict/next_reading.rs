@@ -30,14 +30,20 @@ pub struct NextReading {
 /// Each place is weighed as one look that either finds something or not: the information is the
 /// mutual information of that look and of which of the two leading compositions is true.
 pub(super) fn proposals(case: &Case, group: &LeadingGroup) -> Vec<NextReading> {
-    let [first, second, ..] = case.inference.compositions.as_slice() else { return Vec::new() };
+    let [first, second, ..] = case.inference.compositions.as_slice() else {
+        return Vec::new();
+    };
     let settled = first.posterior >= DECISIVE_POSTERIOR && group.swaps.is_empty();
     let total = first.posterior + second.posterior;
     if settled || total.is_nan() || total <= 0.0 {
         return Vec::new();
     }
     let differing: Vec<usize> = symmetric_difference(&first.members, &second.members);
-    let separates: Vec<String> = case.names(&differing).into_iter().map(|name| name.id).collect();
+    let separates: Vec<String> = case
+        .names(&differing)
+        .into_iter()
+        .map(|name| name.id)
+        .collect();
     let mut places: Vec<NextReading> = differing
         .iter()
         .flat_map(|&candidate| case.relative_features(candidate))
@@ -55,7 +61,9 @@ pub(super) fn proposals(case: &Case, group: &LeadingGroup) -> Vec<NextReading> {
         .filter(|place| place.information_bits >= NEXT_READING_BITS)
         .collect();
     places.sort_by(|a, b| {
-        b.information_bits.total_cmp(&a.information_bits).then(a.wavelength_nm.total_cmp(&b.wavelength_nm))
+        b.information_bits
+            .total_cmp(&a.information_bits)
+            .then(a.wavelength_nm.total_cmp(&b.wavelength_nm))
     });
     keep_distinct(places, case.setup.resolution_nm())
 }
@@ -113,8 +121,9 @@ fn entropy_bits(p: f64) -> f64 {
 fn keep_distinct(places: Vec<NextReading>, resolution_nm: f64) -> Vec<NextReading> {
     let mut kept: Vec<NextReading> = Vec::new();
     for place in places {
-        let distinct =
-            kept.iter().all(|other| (other.wavelength_nm - place.wavelength_nm).abs() >= resolution_nm);
+        let distinct = kept
+            .iter()
+            .all(|other| (other.wavelength_nm - place.wavelength_nm).abs() >= resolution_nm);
         if distinct && kept.len() < NEXT_READINGS_KEPT {
             kept.push(place);
         }

@@ -125,17 +125,30 @@ fn weighed_causes(
     case: &Case,
     evidence: Option<&ReadingEvidence>,
 ) -> (Standing, Option<CauseFinding>, Vec<CauseFinding>) {
-    let Some(evidence) = evidence else { return (Standing::Unexplained, None, Vec::new()) };
+    let Some(evidence) = evidence else {
+        return (Standing::Unexplained, None, Vec::new());
+    };
     let standing = Standing::from_unexplained(evidence.unexplained);
-    let mut causes = evidence.causes.iter().filter_map(|cause| named_cause(case, cause));
+    let mut causes = evidence
+        .causes
+        .iter()
+        .filter_map(|cause| named_cause(case, cause));
     // To name a cause for an unexplained reading would explain it after all.
-    let best = if standing == Standing::Unexplained { None } else { causes.next() };
+    let best = if standing == Standing::Unexplained {
+        None
+    } else {
+        causes.next()
+    };
     (standing, best, causes.collect())
 }
 
 fn named_cause(case: &Case, cause: &Cause) -> Option<CauseFinding> {
     let (emitter, feature) = case.feature(cause.candidate, cause.feature)?;
-    let origin = case.weighed.get(cause.candidate)?.origins.get(cause.feature)?;
+    let origin = case
+        .weighed
+        .get(cause.candidate)?
+        .origins
+        .get(cause.feature)?;
     Some(CauseFinding {
         candidate: cause.candidate,
         feature: cause.feature,
@@ -176,7 +189,15 @@ mod tests {
         use Standing::{Doubtful, Explained, Unexplained};
         assert_eq!(
             standing,
-            [Explained, Explained, Doubtful, Doubtful, Doubtful, Unexplained, Unexplained]
+            [
+                Explained,
+                Explained,
+                Doubtful,
+                Doubtful,
+                Doubtful,
+                Unexplained,
+                Unexplained
+            ]
         );
         // A chance that is not a number must not pass for an explanation.
         assert_eq!(Standing::from_unexplained(f64::NAN), Doubtful);

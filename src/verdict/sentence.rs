@@ -27,42 +27,72 @@ pub(super) fn answer(
             Candidates::Everything => "in the library",
             _ => "on the candidate list",
         };
-        return format!("Nothing {weighed} explains these readings: probability {shown}, unexplained.");
+        return format!(
+            "Nothing {weighed} explains these readings: probability {shown}, unexplained."
+        );
     }
     let mut finding = members(case, case.leader(), |member| {
-        group.names(case, member).into_iter().map(|name| name.name).collect()
+        group
+            .names(case, member)
+            .into_iter()
+            .map(|name| name.name)
+            .collect()
     });
     if let Some(name) = composed {
         finding = format!("{finding} (together met as {name})");
     }
     let has = |test: fn(&Warning) -> bool| warnings.iter().any(test);
     if decision == Decision::Decisive {
-        format!("{}: probability {shown}, decisive.", sentence_case(&finding))
+        format!(
+            "{}: probability {shown}, decisive.",
+            sentence_case(&finding)
+        )
     } else if has(|warning| matches!(warning, Warning::UnlistedSubstanceLikely { .. })) {
         format!(
-            "A substance that is not listed is likely; of those weighed, {finding} fits best: probability \
-             {shown} at most, not decisive."
+            "A substance that is not listed is likely; of those weighed, the best fit is {finding}: \
+             probability {shown} at most, not decisive."
         )
     } else if has(|warning| matches!(warning, Warning::ListCutShort { .. })) {
-        format!("Perhaps {finding}, on a list cut short: probability {shown} at most, not decisive.")
+        format!(
+            "Perhaps {finding}, on a list cut short: probability {shown} at most, not decisive."
+        )
     } else {
-        let likely = if group.posterior >= MOST_LIKELY_FROM { "Most likely" } else { "Perhaps" };
+        let likely = if group.posterior >= MOST_LIKELY_FROM {
+            "Most likely"
+        } else {
+            "Perhaps"
+        };
         format!("{likely} {finding}: probability {shown}, not decisive.")
     }
 }
 
 /// A composition in words: `strontium and lithium, with sodium`.
 pub(super) fn composition(case: &Case, composition: &[usize]) -> String {
-    members(case, composition, |member| case.name(member).into_iter().map(|name| name.name).collect())
+    members(case, composition, |member| {
+        case.name(member)
+            .into_iter()
+            .map(|name| name.name)
+            .collect()
+    })
 }
 
 /// What is on nearly every sample comes last, behind "with": it is seldom what was asked.
 fn members(case: &Case, members: &[usize], names: impl Fn(usize) -> Vec<String>) -> String {
     let named = |ubiquitous: bool| -> Vec<String> {
-        let mut chosen: Vec<usize> =
-            members.iter().copied().filter(|&member| case.is_ubiquitous(member) == ubiquitous).collect();
-        chosen.sort_by(|&a, &b| case.presence_of(b).total_cmp(&case.presence_of(a)).then(a.cmp(&b)));
-        chosen.into_iter().map(|member| alternatives(&names(member))).collect()
+        let mut chosen: Vec<usize> = members
+            .iter()
+            .copied()
+            .filter(|&member| case.is_ubiquitous(member) == ubiquitous)
+            .collect();
+        chosen.sort_by(|&a, &b| {
+            case.presence_of(b)
+                .total_cmp(&case.presence_of(a))
+                .then(a.cmp(&b))
+        });
+        chosen
+            .into_iter()
+            .map(|member| alternatives(&names(member)))
+            .collect()
     };
     match (named(false).as_slice(), named(true).as_slice()) {
         ([], []) => "none of the weighed substances".to_owned(),
@@ -76,8 +106,10 @@ fn members(case: &Case, members: &[usize], names: impl Fn(usize) -> Vec<String>)
 pub(super) fn composed_name(case: &Case) -> Option<String> {
     let ids = |keep: &dyn Fn(usize) -> bool| -> Vec<&str> {
         let kept = case.leader().iter().copied().filter(|&member| keep(member));
-        let mut ids: Vec<&str> =
-            kept.filter_map(|member| case.substance(member)).map(|substance| substance.id.as_str()).collect();
+        let mut ids: Vec<&str> = kept
+            .filter_map(|member| case.substance(member))
+            .map(|substance| substance.id.as_str())
+            .collect();
         ids.sort_unstable();
         ids
     };

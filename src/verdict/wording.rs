@@ -21,6 +21,15 @@ pub fn probability(p: f64) -> String {
     }
 }
 
+/// A bound on a probability: `at most 0.02`, `less than 0.001`.
+pub fn at_most(bound: f64) -> String {
+    if bound < 0.001 {
+        "less than 0.001".to_owned()
+    } else {
+        format!("at most {}", probability(bound))
+    }
+}
+
 /// Decimals that a quantity with standard uncertainty `uncertainty` deserves: its uncertainty
 /// shows one significant digit, two when the first is a 1.
 pub fn decimals(uncertainty: f64) -> usize {
@@ -73,7 +82,11 @@ pub fn rows(rows: &[usize]) -> String {
     let mut runs: Vec<String> = Vec::new();
     let mut rest = sorted.as_slice();
     while let Some(&first) = rest.first() {
-        let length = rest.iter().zip(first..).take_while(|&(&row, expected)| row == expected).count();
+        let length = rest
+            .iter()
+            .zip(first..)
+            .take_while(|&(&row, expected)| row == expected)
+            .count();
         if length >= 3 {
             runs.push(format!("{first}-{}", first + length - 1));
         } else {
@@ -88,7 +101,9 @@ pub fn rows(rows: &[usize]) -> String {
 /// The same text with its first letter in upper case, to start a sentence.
 pub fn sentence_case(text: &str) -> String {
     let mut letters = text.chars();
-    letters.next().map_or_else(String::new, |first| first.to_uppercase().chain(letters).collect())
+    letters.next().map_or_else(String::new, |first| {
+        first.to_uppercase().chain(letters).collect()
+    })
 }
 
 #[cfg(test)]
@@ -98,10 +113,14 @@ mod tests {
 
     #[test]
     fn probabilities_never_read_as_certainty() {
-        let shown = [0.0, 0.0004, 0.004, 0.0096, 0.62, 0.984, 0.9855, 0.9949, 0.9991, 1.0];
+        let shown = [
+            0.0, 0.0004, 0.004, 0.0096, 0.62, 0.984, 0.9855, 0.9949, 0.9991, 1.0,
+        ];
         let words: Vec<String> = shown.iter().map(|&p| probability(p)).collect();
-        let expected =
-            ["< 0.001", "< 0.001", "0.004", "0.01", "0.62", "0.98", "0.986", "0.995", "> 0.999", "> 0.999"];
+        let expected = [
+            "< 0.001", "< 0.001", "0.004", "0.01", "0.62", "0.98", "0.986", "0.995", "> 0.999",
+            "> 0.999",
+        ];
         assert_eq!(words, expected);
         assert_eq!(probability(f64::NAN), "unknown");
     }

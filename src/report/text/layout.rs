@@ -35,6 +35,7 @@ pub(super) fn paragraph(text: &str, first: &str, others: &str) -> String {
     let options = textwrap::Options::new(WIDTH)
         .initial_indent(first)
         .subsequent_indent(others)
+        .word_separator(textwrap::WordSeparator::AsciiSpace)
         .word_splitter(textwrap::WordSplitter::NoHyphenation);
     let mut wrapped = textwrap::wrap(&plain(text), options).join("\n");
     wrapped.push('\n');
@@ -43,7 +44,11 @@ pub(super) fn paragraph(text: &str, first: &str, others: &str) -> String {
 
 /// Keys and values in two columns.
 pub(super) fn pairs(pairs: &[(String, String)]) -> String {
-    let keys = pairs.iter().map(|(key, _)| plain(key).width()).max().unwrap_or(0);
+    let keys = pairs
+        .iter()
+        .map(|(key, _)| plain(key).width())
+        .max()
+        .unwrap_or(0);
     let indent = " ".repeat(keys + 4);
     let line = |(key, value): &(String, String)| {
         let key = plain(key);
@@ -69,16 +74,24 @@ pub(super) struct Cell {
 
 impl Cell {
     pub fn new(text: impl AsRef<str>) -> Self {
-        Self { text: plain(text.as_ref()), style: None }
+        Self {
+            text: plain(text.as_ref()),
+            style: None,
+        }
     }
 
     pub fn painted(text: impl AsRef<str>, style: Style) -> Self {
-        Self { text: plain(text.as_ref()), style: Some(style) }
+        Self {
+            text: plain(text.as_ref()),
+            style: Some(style),
+        }
     }
 
     fn padded(&self, width: usize, align: Align) -> String {
         let fill = " ".repeat(width.saturating_sub(self.text.width()));
-        let text = self.style.map_or_else(|| self.text.clone(), |style| painted(&self.text, style));
+        let text = self
+            .style
+            .map_or_else(|| self.text.clone(), |style| painted(&self.text, style));
         match align {
             Align::Left => format!("{text}{fill}"),
             Align::Right => format!("{fill}{text}"),
@@ -90,7 +103,12 @@ impl Cell {
 /// width; the others are as wide as their widest cell. `aligns` gives the columns before the last.
 pub(super) fn columns(rows: &[Vec<Cell>], aligns: &[Align]) -> String {
     let widths: Vec<usize> = (0..aligns.len())
-        .map(|column| rows.iter().filter_map(|row| row.get(column)).map(|cell| cell.text.width()).max())
+        .map(|column| {
+            rows.iter()
+                .filter_map(|row| row.get(column))
+                .map(|cell| cell.text.width())
+                .max()
+        })
         .map(|widest| widest.unwrap_or(0))
         .collect();
     let indent = 2 + widths.iter().map(|width| width + 2).sum::<usize>();

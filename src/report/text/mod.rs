@@ -5,7 +5,7 @@ mod sample;
 
 use super::escape::plain;
 use super::view::{IdentifyView, InputView, RefusalView};
-use layout::{heading, paragraph, pairs};
+use layout::{heading, pairs, paragraph};
 
 /// How much of a report is wanted.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -32,11 +32,19 @@ pub fn identify_text(view: &IdentifyView, detail: Detail) -> String {
     closing.extend(refused(&view.refused));
     if detail == Detail::Full {
         closing.extend(inputs(&view.inputs));
-        closing.push(format!("{}{}", heading("Set-up used"), pairs(&view.setup_described)));
+        closing.push(format!(
+            "{}{}",
+            heading("Set-up used"),
+            pairs(&view.setup_described)
+        ));
         closing.push(versions(view));
     }
     if !text.is_empty() && !closing.is_empty() {
-        text.push_str(if several && detail == Detail::Full { &rule } else { "\n" });
+        text.push_str(if several && detail == Detail::Full {
+            &rule
+        } else {
+            "\n"
+        });
     }
     text.push_str(&closing.join("\n"));
     text
@@ -56,9 +64,15 @@ fn refused(refused: &[RefusalView]) -> Option<String> {
 /// A refusal on one line: where, what, and what to try.
 fn located(refusal: &RefusalView) -> String {
     let place = [
-        refusal.sample.as_ref().map(|sample| format!("sample {sample}")),
+        refusal
+            .sample
+            .as_ref()
+            .map(|sample| format!("sample {sample}")),
         refusal.row.map(|row| format!("row {row}")),
-        refusal.column.as_ref().map(|column| format!("column {column}")),
+        refusal
+            .column
+            .as_ref()
+            .map(|column| format!("column {column}")),
     ];
     let place: Vec<String> = place.into_iter().flatten().collect();
     let mut text = format!("{}:", refusal.input);
@@ -78,26 +92,45 @@ fn inputs(inputs: &[InputView]) -> Option<String> {
     let mut text = heading("Read");
     for input in inputs {
         let separator = match input.separator {
-            None => "one column".to_owned(),
-            Some('\t') => "columns parted by tabs".to_owned(),
-            Some(separator) => format!("columns parted by {separator}"),
+            None => "one column",
+            Some('\t') => "columns parted by tabs",
+            Some(';') => "columns parted by semicolons",
+            Some(_) => "columns parted by commas",
         };
-        let sign = if input.decimal_sign == ',' { "comma" } else { "point" };
-        let how = format!("{}: {}, {separator}, decimal {sign}", input.path, input.encoding);
+        let sign = if input.decimal_sign == ',' {
+            "comma"
+        } else {
+            "point"
+        };
+        let how = format!(
+            "{}: {}, {separator}, decimal {sign}",
+            input.path, input.encoding
+        );
         text.push_str(&paragraph(&how, "  ", "    "));
         text.push_str(&format!("    sha256 {}\n", plain(&input.sha256)));
         for comment in &input.comments {
-            text.push_str(&paragraph(&format!("# {}", comment.trim()), "    ", "      "));
+            text.push_str(&paragraph(
+                &format!("# {}", comment.trim()),
+                "    ",
+                "      ",
+            ));
         }
         for warning in &input.warnings {
-            text.push_str(&paragraph(&format!("{} {}", warning.message, warning.next_step), "    ", "      "));
+            text.push_str(&paragraph(
+                &format!("{} {}", warning.message, warning.next_step),
+                "    ",
+                "      ",
+            ));
         }
     }
     Some(text)
 }
 
 fn versions(view: &IdentifyView) -> String {
-    let library = format!("library of {} substances, sha256 {}", view.library.substances, view.library.sha256);
+    let library = format!(
+        "library of {} substances, sha256 {}",
+        view.library.substances, view.library.sha256
+    );
     format!(
         "{}{}",
         paragraph(&format!("linstock {}", view.version), "", ""),

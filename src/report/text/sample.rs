@@ -1,11 +1,11 @@
 //! The report of one sample, in the order in which a reader needs it.
 
-use super::layout::{
-    Align, Cell, GOOD, OPEN, STRONG, WRONG, columns, heading, painted, paragraph,
-};
+use super::layout::{Align, Cell, GOOD, OPEN, STRONG, WRONG, columns, heading, painted, paragraph};
 use crate::report::picture::picture;
 use crate::report::view::{CauseView, CompositionView, ReadingView, SampleView, SubstanceView};
-use crate::verdict::wording::{list, probability, wavelength, wavelength_with_uncertainty};
+use crate::verdict::wording::{
+    at_most, list, probability, wavelength, wavelength_with_uncertainty,
+};
 use anstyle::Style;
 
 /// Compositions below this are not printed, after the first three.
@@ -33,13 +33,18 @@ pub(super) fn answer(sample: &SampleView, several: bool) -> String {
         _ => STRONG.fg_color(OPEN.get_fg_color()),
     };
     let wrapped = paragraph(&sentence, "", "");
-    wrapped.lines().map(|line| format!("{}\n", painted(line, style))).collect()
+    wrapped
+        .lines()
+        .map(|line| format!("{}\n", painted(line, style)))
+        .collect()
 }
 
 /// A sentence that follows a colon.
 fn lower_first(sentence: &str) -> String {
     let mut letters = sentence.chars();
-    letters.next().map_or_else(String::new, |first| first.to_lowercase().chain(letters).collect())
+    letters.next().map_or_else(String::new, |first| {
+        first.to_lowercase().chain(letters).collect()
+    })
 }
 
 /// The full report.
@@ -56,7 +61,11 @@ pub(super) fn full(sample: &SampleView, several: bool) -> String {
         next_readings(sample),
         cautions(sample),
     ];
-    sections.into_iter().flatten().collect::<Vec<_>>().join("\n")
+    sections
+        .into_iter()
+        .flatten()
+        .collect::<Vec<_>>()
+        .join("\n")
 }
 
 fn shown(p: Option<f64>) -> String {
@@ -66,7 +75,7 @@ fn shown(p: Option<f64>) -> String {
 fn compositions(sample: &SampleView) -> Option<String> {
     let mut text = ranking(&sample.compositions, "Compositions")?;
     if let Some(bound) = sample.untested_mass_bound {
-        let note = format!("Compositions not weighed hold at most {} together.", probability(bound));
+        let note = format!("Compositions not weighed hold {} together.", at_most(bound));
         text.push_str(&paragraph(&note, "  ", "  "));
     }
     for group in &sample.either_or {
@@ -87,25 +96,29 @@ fn ranking(compositions: &[CompositionView], title: &str) -> Option<String> {
     if compositions.is_empty() {
         return None;
     }
-    let has_evidence = compositions.iter().any(|composition| composition.log_evidence.is_some());
+    let has_evidence = compositions
+        .iter()
+        .any(|composition| composition.log_evidence.is_some());
     let mut head = vec![Cell::new(""), Cell::new("probability")];
     head.extend(has_evidence.then(|| Cell::new("ln evidence")));
+    head.push(Cell::new("composition"));
     let mut rows = vec![head];
-    rows[0].push(Cell::new("composition"));
     let worth = |composition: &&CompositionView| {
-        composition.rank <= 3 || composition.posterior.is_none_or(|p| p >= COMPOSITION_SHOWN_FROM)
+        composition.rank <= 3
+            || composition
+                .posterior
+                .is_none_or(|p| p >= COMPOSITION_SHOWN_FROM)
     };
     for composition in compositions.iter().filter(worth).take(COMPOSITIONS_SHOWN) {
-        let mut row = vec![Cell::new(composition.rank.to_string()), Cell::new(shown(composition.posterior))];
+        let mut row = vec![
+            Cell::new(composition.rank.to_string()),
+            Cell::new(shown(composition.posterior)),
+        ];
         if has_evidence {
             let evidence = composition.log_evidence.map(|value| format!("{value:.1}"));
             row.push(Cell::new(evidence.as_deref().unwrap_or(UNKNOWN)));
         }
-        row.push(Cell::new(if composition.names.is_empty() {
-            "none of the weighed substances".to_owned()
-        } else {
-            list(&composition.names)
-        }));
+        row.push(Cell::new(&composition.described));
         rows.push(row);
     }
     let aligns = vec![Align::Right; if has_evidence { 3 } else { 2 }];
@@ -116,17 +129,28 @@ fn substances(sample: &SampleView) -> Option<String> {
     if sample.substances.is_empty() {
         return None;
     }
-    let leading = sample.compositions.first().map_or(&[][..], |leader| &leader.substances);
+    let leading = sample
+        .compositions
+        .first()
+        .map_or(&[][..], |leader| &leader.substances);
     let worth = |substance: &&SubstanceView| {
         leading.contains(&substance.substance)
-            || substance.presence_probability.is_none_or(|p| p >= SUBSTANCE_SHOWN_FROM)
+            || substance
+                .presence_probability
+                .is_none_or(|p| p >= SUBSTANCE_SHOWN_FROM)
     };
     let mut rows = vec![
-        ["", "present", "in sample", "would show", ""].map(Cell::new).to_vec(),
+        ["", "seen", "in sample", "would show", "substance"]
+            .map(Cell::new)
+            .to_vec(),
     ];
     let shown_rows: Vec<&SubstanceView> = sample.substances.iter().filter(worth).collect();
     for substance in &shown_rows {
-        let remark = if substance.rests_on_one_line { ", rests on one reading" } else { "" };
+        let remark = if substance.rests_on_one_line {
+            ", rests on one reading"
+        } else {
+            ""
+        };
         rows.push(vec![
             Cell::new(&substance.symbol),
             Cell::new(shown(substance.presence_probability)),
@@ -135,13 +159,19 @@ fn substances(sample: &SampleView) -> Option<String> {
             Cell::new(format!("{}{remark}", substance.name)),
         ]);
     }
-    let mut text = heading("Substances (chance of having caused a reading, of being there, of showing if there)");
+    let mut text =
+        heading("Substances (chance of a reading from it, of its presence, of its showing)");
     if !shown_rows.is_empty() {
-        text.push_str(&columns(&rows, &[Align::Left, Align::Right, Align::Right, Align::Right]));
+        text.push_str(&columns(
+            &rows,
+            &[Align::Left, Align::Right, Align::Right, Align::Right],
+        ));
     }
     let others = sample.substances.len() - shown_rows.len();
     if others > 0 {
-        text.push_str(&format!("  {others} more were weighed, each present with less than 0.01\n"));
+        text.push_str(&format!(
+            "  {others} more were weighed, each seen with less than 0.01\n"
+        ));
     }
     Some(text)
 }
@@ -150,8 +180,17 @@ fn readings(sample: &SampleView) -> Option<String> {
     if sample.readings.is_empty() {
         return None;
     }
-    let mut rows =
-        vec![["row", "nm in air", "residual/u", "standing", "best cause, nm"].map(Cell::new).to_vec()];
+    let mut rows = vec![
+        [
+            "row",
+            "nm in air",
+            "residual/u",
+            "standing",
+            "best cause, nm",
+        ]
+        .map(Cell::new)
+        .to_vec(),
+    ];
     for reading in &sample.readings {
         rows.push(reading_row(reading));
         for note in &reading.notes {
@@ -161,7 +200,11 @@ fn readings(sample: &SampleView) -> Option<String> {
         }
     }
     let aligns = [Align::Right, Align::Right, Align::Right, Align::Left];
-    Some(format!("{}{}", heading("Readings"), columns(&rows, &aligns)))
+    Some(format!(
+        "{}{}",
+        heading("Readings"),
+        columns(&rows, &aligns)
+    ))
 }
 
 fn reading_row(reading: &ReadingView) -> Vec<Cell> {
@@ -174,13 +217,21 @@ fn reading_row(reading: &ReadingView) -> Vec<Cell> {
         (Some(nm), Some(u)) => wavelength_with_uncertainty(nm, u),
         _ => UNKNOWN.to_owned(),
     };
-    let residual = reading.cause.as_ref().and_then(|cause| cause.residual_sigma);
+    let residual = reading
+        .cause
+        .as_ref()
+        .and_then(|cause| cause.residual_sigma);
     vec![
         Cell::new(row),
         Cell::new(position),
         Cell::new(residual.map_or_else(|| UNKNOWN.to_owned(), |sigma| format!("{sigma:+.1}"))),
         Cell::painted(reading.standing, standing_style(reading.standing)),
-        Cell::new(reading.cause.as_ref().map_or_else(|| UNKNOWN.to_owned(), cause)),
+        Cell::new(
+            reading
+                .cause
+                .as_ref()
+                .map_or_else(|| UNKNOWN.to_owned(), cause),
+        ),
     ]
 }
 
@@ -213,7 +264,11 @@ fn missing(sample: &SampleView) -> Option<String> {
     if sample.missing_lines.is_empty() {
         return None;
     }
-    let mut rows = vec![["nm in air", "missed by chance", "line"].map(Cell::new).to_vec()];
+    let mut rows = vec![
+        ["nm in air", "missed by chance", "line"]
+            .map(Cell::new)
+            .to_vec(),
+    ];
     for line in &sample.missing_lines {
         let position = match (line.wavelength_nm, line.uncertainty_nm) {
             (Some(nm), Some(u)) => wavelength(nm, u),
@@ -236,7 +291,11 @@ fn warnings(sample: &SampleView) -> Option<String> {
     let mut text = heading("Warnings");
     for warning in &sample.warnings {
         text.push_str(&paragraph(&warning.message, "  ! ", "    "));
-        text.push_str(&paragraph(&format!("Next: {}", warning.next_step), "    ", "    "));
+        text.push_str(&paragraph(
+            &format!("Next: {}", warning.next_step),
+            "    ",
+            "    ",
+        ));
     }
     Some(text)
 }
@@ -256,7 +315,10 @@ fn next_readings(sample: &SampleView) -> Option<String> {
         ]);
     }
     let table = columns(&rows, &[Align::Right, Align::Right]);
-    Some(format!("{}{table}", heading("Where a further reading would tell most")))
+    Some(format!(
+        "{}{table}",
+        heading("Where a further reading would tell most")
+    ))
 }
 
 fn cautions(sample: &SampleView) -> Option<String> {

@@ -188,9 +188,18 @@ impl Warning {
             Self::UncertaintyAssumed { .. } => "uncertainty-assumed",
             Self::ThresholdFromWeakest => "threshold-from-weakest",
             Self::ThresholdLowered { .. } => "threshold-lowered",
-            Self::ReadingsSetAside { reason: AsideReason::OutOfRange, .. } => "reading-out-of-range",
-            Self::ReadingsSetAside { reason: AsideReason::BlindStretch, .. } => "reading-in-blind-stretch",
-            Self::ReadingsSetAside { reason: AsideReason::ContinuumMaximum, .. } => "continuum-maximum",
+            Self::ReadingsSetAside {
+                reason: AsideReason::OutOfRange,
+                ..
+            } => "reading-out-of-range",
+            Self::ReadingsSetAside {
+                reason: AsideReason::BlindStretch,
+                ..
+            } => "reading-in-blind-stretch",
+            Self::ReadingsSetAside {
+                reason: AsideReason::ContinuumMaximum,
+                ..
+            } => "continuum-maximum",
             Self::RepeatsPooled { .. } => "repeats-pooled",
             Self::UnknownColumn { .. } => "unknown-column",
             Self::UnusedColumn { .. } => "unused-column",
@@ -199,6 +208,9 @@ impl Warning {
 
     /// No answer is decisive beside this warning.
     pub fn caps_decision(&self) -> bool {
-        matches!(self, Self::UnlistedSubstanceLikely { .. } | Self::ListCutShort { .. })
+        matches!(
+            self,
+            Self::UnlistedSubstanceLikely { .. } | Self::ListCutShort { .. }
+        )
     }
 }

@@ -13,8 +13,12 @@ pub(super) fn mix_ups(case: &Case, readings: &[ReadingFinding]) -> Vec<Warning> 
     if !is_grating(case.setup.instrument()) {
         return Vec::new();
     }
-    let unexplained = readings.iter().filter(|reading| reading.standing == Standing::Unexplained);
-    unexplained.filter_map(|reading| mix_up(case, reading)).collect()
+    let unexplained = readings
+        .iter()
+        .filter(|reading| reading.standing == Standing::Unexplained);
+    unexplained
+        .filter_map(|reading| mix_up(case, reading))
+        .collect()
 }
 
 fn mix_up(case: &Case, reading: &ReadingFinding) -> Option<Warning> {
@@ -37,17 +41,25 @@ fn strong_line_near(case: &Case, reading: &ReadingFinding, factor: f64) -> Optio
     let reading_u = factor * reading.uncertainty_nm.hypot(case.setup.offset_nm());
     let mut nearest: Option<(String, f64)> = None;
     for &member in case.leader() {
-        let Some(weighed) = case.weighed.get(member) else { continue };
+        let Some(weighed) = case.weighed.get(member) else {
+            continue;
+        };
         let features = &weighed.candidate.features;
-        let strongest = features.iter().map(|feature| feature.level_dex).fold(f64::NEG_INFINITY, f64::max);
+        let strongest = features
+            .iter()
+            .map(|feature| feature.level_dex)
+            .fold(f64::NEG_INFINITY, f64::max);
         for feature in features {
             let distance = (sought_nm - feature.wavelength_nm).abs();
             let close = distance <= ORDER_MATCH_SIGMA * reading_u.hypot(feature.uncertainty_nm);
             let strong = feature.level_dex >= strongest - STRONG_WITHIN_DEX;
-            let nearer =
-                nearest.as_ref().is_none_or(|(_, line_nm)| distance < (sought_nm - line_nm).abs());
+            let nearer = nearest
+                .as_ref()
+                .is_none_or(|(_, line_nm)| distance < (sought_nm - line_nm).abs());
             if close && strong && nearer {
-                nearest = case.name(member).map(|name| (name.name, feature.wavelength_nm));
+                nearest = case
+                    .name(member)
+                    .map(|name| (name.name, feature.wavelength_nm));
             }
         }
     }

@@ -2,14 +2,23 @@
 
 use super::{MemoryRow, Warning};
 use crate::reduction::AsideReason;
-use crate::verdict::wording::{alternatives, list, probability, rows, sentence_case, wavelength_with_uncertainty};
+use crate::verdict::wording::{
+    alternatives, at_most, list, probability, rows, sentence_case, wavelength_with_uncertainty,
+};
 
 impl Warning {
     /// What is the matter, in plain words.
     pub fn message(&self) -> String {
         match self {
-            Self::UnlistedSubstanceLikely { readings, restricted } => {
-                let weighed = if *restricted { "on the candidate list" } else { "in the library" };
+            Self::UnlistedSubstanceLikely {
+                readings,
+                restricted,
+            } => {
+                let weighed = if *restricted {
+                    "on the candidate list"
+                } else {
+                    "in the library"
+                };
                 format!(
                     "{} readings are not explained by anything {weighed} ({} nm): a substance that is not \
                      listed is likely, whatever the probabilities above say.",
@@ -17,20 +26,31 @@ impl Warning {
                     list(readings)
                 )
             }
-            Self::ListCutShort { count, stated: true } => format!(
+            Self::ListCutShort {
+                count,
+                stated: true,
+            } => format!(
                 "The list was cut at {count} readings, so a line that is not on it may still be there; \
                  the answer is held back."
             ),
-            Self::ListCutShort { count, stated: false } => format!(
+            Self::ListCutShort {
+                count,
+                stated: false,
+            } => format!(
                 "Exactly {count} readings with strengths and no faintest strength look like a list cut by \
                  count; a line that is not on it may still be there, so the answer is held back."
             ),
             Self::UntestedCompositions { bound } => format!(
-                "Compositions that were not weighed may hold up to {} of the probability.",
-                probability(*bound)
+                "Compositions that were not weighed hold {} of the probability, which may change the answer.",
+                at_most(*bound)
             ),
-            Self::RestsOnOneLine { substance, reading, .. } => match reading {
-                Some(reading) => format!("{} rests on one reading, {reading} nm.", sentence_case(substance)),
+            Self::RestsOnOneLine {
+                substance, reading, ..
+            } => match reading {
+                Some(reading) => format!(
+                    "{} rests on one reading, {reading} nm.",
+                    sentence_case(substance)
+                ),
                 None => format!("{} rests on one reading.", sentence_case(substance)),
             },
             Self::CannotSeparate { substances, .. } => {
@@ -47,7 +67,10 @@ impl Warning {
                 "The answer depends on how common the substances are held to be: {halved} if half as \
                  common, {doubled} if twice as common."
             ),
-            Self::CommonShift { shift_nm: (mean, sd), stated_nm } => format!(
+            Self::CommonShift {
+                shift_nm: (mean, sd),
+                stated_nm,
+            } => format!(
                 "All readings lie {} nm {} the reference lines; the set-up allows {stated_nm} nm.",
                 wavelength_with_uncertainty(mean.abs(), *sd),
                 if *mean > 0.0 { "above" } else { "below" },
@@ -60,7 +83,13 @@ impl Warning {
                 "The readings meet the reference lines within {rms_sigma:.2} standard uncertainties on \
                  average: the stated uncertainties are larger than need be."
             ),
-            Self::PossibleOrderMixUp { reading, substance, line_nm, doubled, .. } => format!(
+            Self::PossibleOrderMixUp {
+                reading,
+                substance,
+                line_nm,
+                doubled,
+                ..
+            } => format!(
                 "The unexplained reading {reading} nm is {} the {substance} line at {line_nm:.1} nm: it \
                  may belong to another order.",
                 if *doubled { "half of" } else { "twice" },
@@ -74,7 +103,10 @@ impl Warning {
             ),
             Self::RestsOnMemory { rows } => {
                 let rows: Vec<String> = rows.iter().map(memory_row).collect();
-                format!("The answer uses library values that were recalled, not looked up: {}.", rows.join("; "))
+                format!(
+                    "The answer uses library values that were recalled, not looked up: {}.",
+                    rows.join("; ")
+                )
             }
             Self::LibraryNotDeepEnough { emitters } => format!(
                 "The set-up reaches fainter features than the library lists for {}; a faint unexplained \
@@ -88,17 +120,27 @@ impl Warning {
     /// Messages about the readings as typed.
     fn message_on_table(&self) -> String {
         match self {
-            Self::UncertaintyAssumed { rows: which, uncertainty_nm } => format!(
+            Self::UncertaintyAssumed {
+                rows: which,
+                uncertainty_nm,
+            } => format!(
                 "{} without an uncertainty: {uncertainty_nm} nm was taken from the set-up.",
                 sentence_case(&rows(which))
             ),
-            Self::ThresholdFromWeakest => "The weakest strength was taken as the faintest that would have \
+            Self::ThresholdFromWeakest => {
+                "The weakest strength was taken as the faintest that would have \
                                            been recorded."
-                .to_owned(),
-            Self::ThresholdLowered { row } => {
-                format!("Row {row} is weaker than the stated faintest strength, which was lowered to it.")
+                    .to_owned()
             }
-            Self::ReadingsSetAside { reason, rows: which } => {
+            Self::ThresholdLowered { row } => {
+                format!(
+                    "Row {row} is weaker than the stated faintest strength, which was lowered to it."
+                )
+            }
+            Self::ReadingsSetAside {
+                reason,
+                rows: which,
+            } => {
                 let why = match reason {
                     AsideReason::OutOfRange => "outside the range of the set-up",
                     AsideReason::BlindStretch => "in a blind stretch",
@@ -109,8 +151,12 @@ impl Warning {
             Self::RepeatsPooled { rows: which } => {
                 format!("Pooled as repeats of one feature: {}.", rows(which))
             }
-            Self::UnknownColumn { column } => format!("The column {column:?} is not known and was not used."),
-            Self::UnusedColumn { column } => format!("The column {column:?} has no use in this command."),
+            Self::UnknownColumn { column } => {
+                format!("The column {column:?} is not known and was not used.")
+            }
+            Self::UnusedColumn { column } => {
+                format!("The column {column:?} has no use in this command.")
+            }
             _ => String::new(),
         }
     }
@@ -197,19 +243,24 @@ impl Warning {
                 "Give --faintest, the smallest strength that would have been recorded."
             }
             Self::ThresholdLowered { .. } => "Give a --faintest that no reading falls below.",
-            Self::ReadingsSetAside { reason: AsideReason::OutOfRange, .. } => {
-                "If the instrument reaches there, widen --range."
-            }
-            Self::ReadingsSetAside { reason: AsideReason::BlindStretch, .. } => {
-                "If something can be seen there, correct --blind or --filter."
-            }
-            Self::ReadingsSetAside { reason: AsideReason::ContinuumMaximum, .. } => {
-                "Nothing, if it is a hump; if it is a band, give the position of its edge."
-            }
+            Self::ReadingsSetAside {
+                reason: AsideReason::OutOfRange,
+                ..
+            } => "If the instrument reaches there, widen --range.",
+            Self::ReadingsSetAside {
+                reason: AsideReason::BlindStretch,
+                ..
+            } => "If something can be seen there, correct --blind or --filter.",
+            Self::ReadingsSetAside {
+                reason: AsideReason::ContinuumMaximum,
+                ..
+            } => "Nothing, if it is a hump; if it is a band, give the position of its edge.",
             Self::RepeatsPooled { .. } => {
                 "Nothing, if they are repeats; otherwise state smaller uncertainties or --division."
             }
-            Self::UnknownColumn { .. } => "Rename it if it was meant to be used; see the list of columns in the help.",
+            Self::UnknownColumn { .. } => {
+                "Rename it if it was meant to be used; see the list of columns in the help."
+            }
             Self::UnusedColumn { .. } => "Nothing.",
             _ => "",
         };
@@ -218,10 +269,15 @@ impl Warning {
 }
 
 fn untestable(substances: &[(String, f64)]) -> String {
-    let named = substances.iter().map(|(name, chance)| format!("{name} ({})", probability(*chance)));
+    let named = substances
+        .iter()
+        .map(|(name, chance)| format!("{name} ({})", probability(*chance)));
     list(&named.collect::<Vec<_>>())
 }
 
 fn memory_row(row: &MemoryRow) -> String {
-    format!("{} row {} ({}, {}, source {})", row.table, row.row, row.emitter, row.what, row.source)
+    format!(
+        "{} row {} ({}, {}, source {})",
+        row.table, row.row, row.emitter, row.what, row.source
+    )
 }
