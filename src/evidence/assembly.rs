@@ -97,8 +97,8 @@ pub struct Assembly {
 /// A line of the laid-out composition with the r of every reading in its segment, at one shift.
 #[derive(Debug, Clone)]
 pub struct Realised {
-    /// (member, line, φ) of the parts.
-    pub parts: Vec<(usize, usize, f64)>,
+    /// (member, line, φ) of the part that holds most of it.
+    pub owner: (usize, usize, f64),
     /// λ, nm.
     pub wavelength_nm: f64,
     /// u_i, nm.
@@ -155,6 +155,15 @@ impl Assembly {
             .enumerate()
             .map(|(e, sums)| sums[latent.state(prepared, e)])
             .sum()
+    }
+
+    /// A number that tells apart all latent states a segment can be in.
+    pub fn state_key(&self, stock: &Stock, segment: &Segment, latents: &[Latent]) -> u64 {
+        segment.emitters.iter().fold(0, |key, (member, emitter)| {
+            let prepared = &stock.prepared[self.members[*member]];
+            let states = prepared.ln_missing_emitter[*emitter].len() as u64;
+            key.wrapping_mul(states).wrapping_add(latents[*member].state(prepared, *emitter) as u64)
+        })
     }
 
     /// ln of the sum over matchings of one segment for every set of barred members and every
@@ -234,7 +243,7 @@ impl Assembly {
             columns.extend(shifts.iter().map(|d| amplitude * pair.position[*d]));
         }
         work.lines.push(Realised {
-            parts: vec![(member, line, 1.0)],
+            owner: (member, line, 1.0),
             wavelength_nm: shape.wavelength_nm,
             uncertainty_nm: shape.uncertainty_nm,
             detection: -prepared.ln_missing[line][state].exp_m1(),
@@ -291,7 +300,7 @@ impl Assembly {
                 }));
             }
             work.lines.push(Realised {
-                parts: group.iter().zip(&weights).map(|(i, w)| (parts[*i].0, parts[*i].1, *w)).collect(),
+                owner: owner(parts, &group, &weights),
                 wavelength_nm: whole.wavelength_nm,
                 uncertainty_nm: whole.uncertainty_nm,
                 detection,
@@ -348,13 +357,8 @@ fn sum_at(
         return [0.0; LANES];
     }
     let stride = r.len() / reading.len();
-    // A blend may match if an unbarred member holds most of it.
-    let free = |line: &Realised| {
-        line.parts.iter().any(|(m, _, _)| {
-            let share: f64 = line.parts.iter().filter(|p| p.0 == *m).map(|p| p.2).sum();
-            share > 0.5 && !is_barred(*m)
-        })
-    };
+    // A blend is caused by the member that holds most of it.
+    let free = |line: &Realised| !is_barred(line.owner.0);
     let r_of = |q: usize| if skip == Some(reading[q]) { 0.0 } else { r[q * stride + d] };
     if segment.readings.len() == 1 || lines.len() == 1 {
         let sum: f64 = lines
@@ -377,6 +381,23 @@ fn sum_at(
             }
         }
     })
+}
+
+/// The member that holds the largest share of a blend, with its strongest line there.
+fn owner(parts: &[(usize, usize)], group: &[usize], weights: &[f64]) -> (usize, usize, f64) {
+    let share = |member: usize| -> f64 {
+        group.iter().zip(weights).filter(|(i, _)| parts[**i].0 == member).map(|(_, w)| w).sum()
+    };
+    // Groups list the strongest first, so that ties go to it.
+    let mut best = (0, 0, f64::NEG_INFINITY);
+    for i in group {
+        let (member, line) = parts[*i];
+        let held = share(member);
+        if held > best.2 {
+            best = (member, line, held);
+        }
+    }
+    best
 }
 
 /// Single lines and chains, in ascending wavelength; single lines that reach no reading are left

@@ -5,6 +5,8 @@ use super::assembly::{Assembly, Latent, Stock, Workspace};
 use super::density::ln_sum_exp;
 use super::matching::{LANES, Lanes};
 use super::settings::MixtureRule;
+use std::collections::HashMap;
+use std::rc::Rc;
 
 /// A composition with its evidence.
 #[derive(Debug, Clone)]
@@ -85,9 +87,17 @@ pub fn middle(stock: &Stock, candidate: usize) -> Latent {
 /// ln of every term of the integrand by (shift in use, lane).
 type Slice = Vec<Lanes>;
 /// ln sums of one segment, `[local bars][shift]`, and ln missing of its chains.
-type Value = (Vec<Lanes>, f64);
+type Value = Rc<(Vec<Lanes>, f64)>;
 /// A segment with its value in another state.
 type Replaced = (usize, Value);
+
+/// The integrand in a state next to the present one.
+struct Point {
+    latents: Vec<Latent>,
+    changed: Vec<Replaced>,
+    totals: Totals,
+    slice: Slice,
+}
 
 /// The integrand about one latent state.
 pub struct Profile<'s, 'a> {
@@ -107,6 +117,19 @@ pub struct Profile<'s, 'a> {
     by_member: Vec<Vec<usize>>,
     by_emitter: Vec<Vec<Vec<usize>>>,
     work: Workspace,
+    /// Values met before, by segment and the states of its emitters.
+    memo: HashMap<(usize, u64), Value>,
+    /// Sums over all segments at `latents`.
+    totals: Totals,
+}
+
+/// Sums over all segments in one state.
+#[derive(Debug, Default, Clone)]
+struct Totals {
+    /// `[set of barred members][shift]`.
+    ln: Vec<Lanes>,
+    /// ln missing of all chains.
+    missing: f64,
 }
 
 impl<'s, 'a> Profile<'s, 'a> {
@@ -135,6 +158,8 @@ impl<'s, 'a> Profile<'s, 'a> {
             by_member,
             by_emitter,
             work: Workspace::default(),
+            memo: HashMap::new(),
+            totals: Totals::default(),
         };
         if barring {
             profile.doubtful = profile.find_doubtful();
@@ -200,26 +225,73 @@ impl<'s, 'a> Profile<'s, 'a> {
     }
 
     fn evaluate(&mut self, segment: usize, latents: &[Latent], without: Option<usize>) -> Value {
+        let part = &self.assembly.segments[segment];
+        let key = (segment, self.assembly.state_key(self.stock, part, latents));
+        if without.is_none()
+            && let Some(known) = self.memo.get(&key)
+        {
+            return Rc::clone(known);
+        }
         let barred: Vec<usize> = self.local_bars[segment].iter().map(|i| self.doubtful[*i]).collect();
         let mut out = Vec::new();
-        let missing = self.assembly.ln_segment(
-            self.stock,
-            &self.assembly.segments[segment],
-            latents,
-            &self.shifts,
-            &barred,
-            without,
-            &mut self.work,
-            &mut out,
-        );
-        (out, missing)
+        let missing =
+            self.assembly
+                .ln_segment(self.stock, part, latents, &self.shifts, &barred, without, &mut self.work, &mut out);
+        let value = Rc::new((out, missing));
+        if without.is_none() {
+            self.memo.insert(key, Rc::clone(&value));
+        }
+        value
     }
 
+    /// Evaluates everything anew: after a change of shifts in use or of barred members.
     fn refresh(&mut self) {
+        self.memo.clear();
+        self.settle();
+    }
+
+    /// Values and totals at `latents`.
+    fn settle(&mut self) {
         let latents = self.latents.clone();
         self.values = (0..self.assembly.segments.len())
             .map(|s| self.evaluate(s, &latents, None))
             .collect();
+        let sets = 1usize << self.doubtful.len();
+        let mut totals = Totals { ln: vec![[0.0; LANES]; sets * self.shifts.len()], missing: 0.0 };
+        for s in 0..self.values.len() {
+            self.accumulate(&mut totals, s, &self.values[s], 1.0);
+        }
+        self.totals = totals;
+    }
+
+    /// Adds `sign` times one segment to the totals.
+    fn accumulate(&self, totals: &mut Totals, segment: usize, value: &Value, sign: f64) {
+        let count = self.shifts.len();
+        totals.missing += sign * value.1;
+        for (set, row) in totals.ln.chunks_exact_mut(count).enumerate() {
+            let local = self.local_bars[segment]
+                .iter()
+                .enumerate()
+                .fold(0, |acc, (bit, i)| acc | (set >> i & 1) << bit);
+            for (to, from) in row.iter_mut().zip(&value.0[local * count..]) {
+                for l in 0..LANES {
+                    to[l] += sign * from[l];
+                }
+            }
+        }
+    }
+
+    /// Totals with some segments replaced; `before` gives their present values.
+    fn with_replaced<'v>(&self, totals: &Totals, changed: &[Replaced], before: impl Fn(usize) -> &'v Value) -> Totals {
+        let mut next = totals.clone();
+        for (s, value) in changed {
+            let old = before(*s);
+            if !Rc::ptr_eq(old, value) {
+                self.accumulate(&mut next, *s, old, -1.0);
+                self.accumulate(&mut next, *s, value, 1.0);
+            }
+        }
+        next
     }
 
     fn own_missing(&self, latents: &[Latent]) -> f64 {
@@ -230,55 +302,37 @@ impl<'s, 'a> Profile<'s, 'a> {
             .sum()
     }
 
-    /// ln L* = ln Σ_B (−1)^|B| L(B barred), with some segments replaced: the last layer that
-    /// holds a segment counts.
-    fn ln_star(&self, latents: &[Latent], layers: &[&[Replaced]]) -> Slice {
-        let value = |s: usize| {
-            layers
-                .iter()
-                .rev()
-                .find_map(|layer| layer.iter().find(|(c, _)| *c == s))
-                .map_or(&self.values[s], |(_, v)| v)
-        };
+    /// ln L* = ln Σ_B (−1)^|B| L(B barred) by shift and lane.
+    fn finish(&self, latents: &[Latent], totals: &Totals) -> Slice {
         let count = self.shifts.len();
+        let missing = self.own_missing(latents) + totals.missing;
         let sets = 1usize << self.doubtful.len();
-        let mut ln = vec![vec![[0.0; LANES]; count]; sets];
-        let mut missing = self.own_missing(latents);
-        for s in 0..self.values.len() {
-            let (sums, chain_missing) = value(s);
-            missing += chain_missing;
-            for (set, row) in ln.iter_mut().enumerate() {
-                let local = self.local_bars[s]
-                    .iter()
-                    .enumerate()
-                    .fold(0, |acc, (bit, i)| acc | (set >> i & 1) << bit);
-                for (to, from) in row.iter_mut().zip(&sums[local * count..]) {
-                    for l in 0..LANES {
-                        to[l] += from[l];
-                    }
-                }
-            }
-        }
         (0..count)
             .map(|d| {
                 std::array::from_fn(|l| {
-                    let whole = ln[0][d][l];
-                    let share: f64 = (0..sets)
-                        .map(|set| {
-                            let sign = if set.count_ones() % 2 == 0 { 1.0 } else { -1.0 };
-                            sign * (ln[set][d][l] - whole).exp()
-                        })
-                        .sum();
+                    let whole = totals.ln[d][l];
+                    let share: f64 = 1.0
+                        + (1..sets)
+                            .map(|set| {
+                                let sign = if set.count_ones() % 2 == 0 { 1.0 } else { -1.0 };
+                                sign * (totals.ln[set * count + d][l] - whole).exp()
+                            })
+                            .sum::<f64>();
                     missing + whole + share.max(0.0).ln()
                 })
             })
             .collect()
     }
 
+    fn present(&self) -> Slice {
+        self.finish(&self.latents, &self.totals)
+    }
+
     /// The integrand in a state that differs from the present one in the given segments.
     fn slice(&mut self, latents: &[Latent], touched: &[usize]) -> Slice {
         let changed = self.replace(latents, touched, None);
-        self.ln_star(latents, &[&changed])
+        let totals = self.with_replaced(&self.totals, &changed, |s| &self.values[s]);
+        self.finish(latents, &totals)
     }
 
     fn replace(&mut self, latents: &[Latent], touched: &[usize], without: Option<usize>) -> Vec<Replaced> {
@@ -336,8 +390,7 @@ impl<'s, 'a> Profile<'s, 'a> {
     fn choose_start(&mut self) {
         let count = self.stock.scene.amount.len();
         let all: Vec<usize> = (0..self.values.len()).collect();
-        let present = self.ln_star(&self.latents, &[]);
-        let mut best = (self.ln_weighted(&present), self.latents.clone());
+        let mut best = (self.ln_weighted(&self.present()), self.latents.clone());
         for quarter in 1..=4 {
             let mut latents = self.latents.clone();
             for latent in &mut latents {
@@ -351,14 +404,58 @@ impl<'s, 'a> Profile<'s, 'a> {
         }
         if best.1 != self.latents {
             self.latents = best.1;
-            self.refresh();
+            self.settle();
         }
     }
 
     fn climb_amount(&mut self, m: usize) -> bool {
+        let mut best = (f64::NEG_INFINITY, self.latents[m].amount);
+        for (k, point) in self.amounts(m) {
+            let value = self.ln_weighted(&point.slice);
+            if value > best.0 {
+                best = (value, k);
+            }
+        }
+        if best.1 == self.latents[m].amount {
+            return false;
+        }
+        self.latents[m].amount = best.1;
+        self.settle();
+        true
+    }
+
+    /// The integrand for the amounts of one member, outwards from the present one until it has
+    /// fallen too far to count.
+    fn amounts(&mut self, m: usize) -> Vec<(usize, Point)> {
         let count = self.stock.scene.amount.len();
+        let centre = self.latents[m].amount;
+        let mut points = vec![(centre, self.point(m, centre))];
+        let mut best = self.ln_weighted(&points[0].1.slice);
+        let down: Vec<usize> = (0..centre).rev().collect();
+        let up: Vec<usize> = (centre + 1..count).collect();
+        for direction in [down, up] {
+            for k in direction {
+                let point = self.point(m, k);
+                let value = self.ln_weighted(&point.slice);
+                points.push((k, point));
+                best = best.max(value);
+                if value < best + NEGLIGIBLE_LN {
+                    break;
+                }
+            }
+        }
+        points.sort_by_key(|(k, _)| *k);
+        points
+    }
+
+    fn point(&mut self, m: usize, amount: usize) -> Point {
         let touched = self.by_member[m].clone();
-        self.choose(m, &touched, (0..count).map(|k| move |l: &mut Latent| l.amount = k))
+        let mut latents = self.latents.clone();
+        latents[m].amount = amount;
+        let changed = self.replace(&latents, &touched, None);
+        let totals = self.with_replaced(&self.totals, &changed, |s| &self.values[s]);
+        let slice = self.finish(&latents, &totals);
+        Point { latents, changed, totals, slice }
     }
 
     fn climb_shifts(&mut self, m: usize) -> bool {
@@ -389,16 +486,13 @@ impl<'s, 'a> Profile<'s, 'a> {
             return false;
         }
         self.latents = best.1;
-        for s in touched {
-            let latents = self.latents.clone();
-            self.values[*s] = self.evaluate(*s, &latents, None);
-        }
+        self.settle();
         true
     }
 
     /// Leaves out shifts that carry nothing at the present state.
     fn drop_negligible_shifts(&mut self) {
-        let now = self.ln_star(&self.latents, &[]);
+        let now = self.present();
         let weights = self.stock.scene.offset.weights();
         let per_shift: Vec<f64> = now
             .iter()
@@ -429,32 +523,26 @@ impl<'s, 'a> Profile<'s, 'a> {
     fn member_profile(&mut self, m: usize, mode: &Slice) -> Slice {
         let candidate = self.assembly.members[m];
         let ln_z = self.stock.prepared[candidate].detectability.max(f64::MIN_POSITIVE).ln();
-        let touched = self.by_member[m].clone();
-        let amount = self.stock.scene.amount.clone();
-        let mut terms: Vec<Vec<f64>> = vec![Vec::new(); mode.len() * LANES];
-        let mode_peak = peak(mode);
-        for (k, weight) in amount.weights().iter().enumerate() {
-            let mut latents = self.latents.clone();
-            latents[m].amount = k;
-            let changed = self.replace(&latents, &touched, None);
-            let mut slice = self.ln_star(&latents, &[&changed]);
-            if peak(&slice) - mode_peak > -30.0 {
-                self.integrate_shifts(m, &latents, &changed, &mut slice);
+        let points = self.amounts(m);
+        let peak = points.iter().map(|(_, p)| peak(&p.slice)).fold(f64::NEG_INFINITY, f64::max);
+        let mut sums = vec![[0.0; LANES]; mode.len()];
+        for (k, mut point) in points {
+            if point_counts(&point, peak) {
+                self.integrate_shifts(m, &mut point);
             }
-            for (d, lanes) in slice.iter().enumerate() {
+            let weight = self.stock.scene.amount.weights()[k];
+            for (sum, (lanes, at)) in sums.iter_mut().zip(point.slice.iter().zip(mode)) {
                 for l in 0..LANES {
-                    terms[d * LANES + l].push(lanes[l] - mode[d][l] + weight.ln() - ln_z);
+                    sum[l] += weight * (lanes[l] - at[l]).exp();
                 }
             }
         }
-        (0..mode.len())
-            .map(|d| std::array::from_fn(|l| ln_sum_exp(&terms[d * LANES + l])))
-            .collect()
+        sums.into_iter().map(|sum| sum.map(|x| x.ln() - ln_z)).collect()
     }
 
     /// Multiplies a slice by the integral over each emitter shift of its member.
-    fn integrate_shifts(&mut self, m: usize, latents: &[Latent], changed: &[Replaced], slice: &mut Slice) {
-        let base = slice.clone();
+    fn integrate_shifts(&mut self, m: usize, point: &mut Point) {
+        let base = point.slice.clone();
         let candidate = self.assembly.members[m];
         for e in 0..self.by_emitter[m].len() {
             let shift = self.stock.prepared[candidate].shifts[e].clone();
@@ -464,17 +552,19 @@ impl<'s, 'a> Profile<'s, 'a> {
             let touched = self.by_emitter[m][e].clone();
             let mut mean = vec![[0.0; LANES]; base.len()];
             for (b, weight) in shift.weights().iter().enumerate() {
-                let mut other = latents.to_vec();
+                let mut other = point.latents.clone();
                 other[m].shifts[e] = b;
                 let own = self.replace(&other, &touched, None);
-                let option = self.ln_star(&other, &[changed, &own]);
+                let changed = &point.changed;
+                let totals = self.with_replaced(&point.totals, &own, |s| value_in(changed, s).unwrap_or(&self.values[s]));
+                let option = self.finish(&other, &totals);
                 for (sum, (o, at)) in mean.iter_mut().zip(option.iter().zip(&base)) {
                     for l in 0..LANES {
                         sum[l] += weight * (o[l] - at[l]).exp();
                     }
                 }
             }
-            for (to, factor) in slice.iter_mut().zip(mean) {
+            for (to, factor) in point.slice.iter_mut().zip(mean) {
                 for l in 0..LANES {
                     if factor[l].is_finite() && factor[l] > 0.0 {
                         to[l] += factor[l].ln();
@@ -486,7 +576,7 @@ impl<'s, 'a> Profile<'s, 'a> {
 
     /// The product approximation about the mode, on all shift nodes.
     pub fn product(&mut self) -> Vec<Lanes> {
-        let mode = self.ln_star(&self.latents, &[]);
+        let mode = self.present();
         let mut total = mode.clone();
         for m in 0..self.assembly.members.len() {
             let profile = self.member_profile(m, &mode);
@@ -534,25 +624,10 @@ impl<'s, 'a> Profile<'s, 'a> {
         if self.assembly.members.is_empty() {
             return vec![1.0; self.stock.scene.observations.len()];
         }
-        let mode = self.ln_star(&self.latents, &[]);
-        let amounts: Vec<Vec<(Vec<Latent>, Vec<Replaced>, Slice)>> =
-            (0..self.assembly.members.len()).map(|m| self.amount_slices(m)).collect();
+        let mode = self.present();
+        let amounts: Vec<Vec<(usize, Point)>> = (0..self.assembly.members.len()).map(|m| self.amounts(m)).collect();
         (0..self.stock.scene.observations.len())
             .map(|j| self.unexplained_reading(j, &mode, &amounts, nodes))
-            .collect()
-    }
-
-    /// State, changed segments and integrand for every amount of one member.
-    fn amount_slices(&mut self, m: usize) -> Vec<(Vec<Latent>, Vec<Replaced>, Slice)> {
-        let touched = self.by_member[m].clone();
-        (0..self.stock.scene.amount.len())
-            .map(|k| {
-                let mut latents = self.latents.clone();
-                latents[m].amount = k;
-                let changed = self.replace(&latents, &touched, None);
-                let slice = self.ln_star(&latents, &[&changed]);
-                (latents, changed, slice)
-            })
             .collect()
     }
 
@@ -560,7 +635,7 @@ impl<'s, 'a> Profile<'s, 'a> {
         &mut self,
         reading: usize,
         mode: &Slice,
-        amounts: &[Vec<(Vec<Latent>, Vec<Replaced>, Slice)>],
+        amounts: &[Vec<(usize, Point)>],
         nodes: &[Lanes],
     ) -> f64 {
         let here = positions(&self.assembly.segments, |s| s.readings.contains(&reading));
@@ -569,21 +644,24 @@ impl<'s, 'a> Profile<'s, 'a> {
         }
         let latents = self.latents.clone();
         let bare = self.replace(&latents, &here, Some(reading));
-        let bare_mode = self.ln_star(&latents, &[&bare]);
+        let bare_totals = self.with_replaced(&self.totals, &bare, |s| &self.values[s]);
+        let bare_mode = self.finish(&latents, &bare_totals);
         let mut ratio = bare_mode.clone();
         subtract(&mut ratio, mode);
-        for (m, states) in amounts.iter().enumerate() {
+        for (m, points) in amounts.iter().enumerate() {
             if !here.iter().any(|s| self.assembly.segments[*s].members.contains(&m)) {
                 continue;
             }
             let mut sums = vec![[[0.0; LANES]; 2]; mode.len()];
-            for (state, changed, with) in states {
-                let own = self.replace(state, &here, Some(reading));
-                let without = self.ln_star(state, &[changed, &own]);
+            for (_, point) in points {
+                let own = self.replace(&point.latents, &here, Some(reading));
+                let totals =
+                    self.with_replaced(&point.totals, &own, |s| value_in(&point.changed, s).unwrap_or(&self.values[s]));
+                let without = self.finish(&point.latents, &totals);
                 for (d, sum) in sums.iter_mut().enumerate() {
                     for l in 0..LANES {
                         sum[0][l] += (without[d][l] - mode[d][l]).exp();
-                        sum[1][l] += (with[d][l] - mode[d][l]).exp();
+                        sum[1][l] += (point.slice[d][l] - mode[d][l]).exp();
                     }
                 }
             }
@@ -646,6 +724,15 @@ fn grid(stock: &Stock, prepared: &super::prepare::Prepared) -> Vec<(Latent, f64)
             .collect();
     }
     states
+}
+
+/// Whether a point carries enough of its profile to integrate its emitter shifts.
+fn point_counts(point: &Point, best: f64) -> bool {
+    peak(&point.slice) > best - 12.0
+}
+
+fn value_in(changed: &[Replaced], segment: usize) -> Option<&Value> {
+    changed.iter().find(|(s, _)| *s == segment).map(|(_, v)| v)
 }
 
 fn positions<T>(items: &[T], keep: impl Fn(&T) -> bool) -> Vec<usize> {

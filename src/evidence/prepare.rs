@@ -66,12 +66,8 @@ impl<'a> Scene<'a> {
     pub fn new(observations: &'a [Observation], conditions: &'a Conditions, settings: &'a Settings) -> Self {
         let stated = observations.iter().filter_map(|o| o.strength_dex);
         let with_strengths = stated.clone().next().is_some();
-        let finest = observations
-            .iter()
-            .map(|o| o.uncertainty_nm)
-            .fold(f64::INFINITY, f64::min);
         let offset = settings.offset.clone().unwrap_or_else(|| {
-            Quadrature::offset(conditions.offset_nm, settings.offset_reach, finest)
+            Quadrature::offset(conditions.offset_nm, settings.offset_reach, shift_spacing(observations))
         });
         let [low, high] = conditions.range_nm;
         let blind: f64 = conditions.blind_nm.iter().map(|[a, b]| b - a).sum();
@@ -160,6 +156,15 @@ impl<'a> Scene<'a> {
             .map(|[a, b]| (b - a).abs() * 0.999)
             .fold(width, f64::min)
     }
+}
+
+/// Spacing of the shift nodes, nm: half the smallest uncertainty, and no wider than what all
+/// readings together leave open, (Σu⁻²)^−½, where the trapezoid rule still errs by less than 1e-8.
+fn shift_spacing(observations: &[Observation]) -> f64 {
+    const FLOOR_NM: f64 = 0.005;
+    let finest = observations.iter().map(|o| o.uncertainty_nm).fold(f64::INFINITY, f64::min);
+    let information: f64 = observations.iter().map(|o| o.uncertainty_nm.max(FLOOR_NM).powi(-2)).sum();
+    (0.5 * finest.max(FLOOR_NM)).min(information.powf(-0.5))
 }
 
 /// Φ(x/σ), a step for σ = 0.

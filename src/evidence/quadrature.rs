@@ -46,15 +46,15 @@ impl Quadrature {
     }
 
     /// The shift common to all readings: uniform nodes over ±`reach` standard deviations, weights
-    /// from 0.95 N(0, sd²) + 0.05 N(0, (5 sd)²), at least 13 nodes, spaced at most half of
-    /// `finest` (nm), at most 2001; one node if `sd` is zero.
-    pub fn offset(sd: f64, reach: f64, finest: f64) -> Self {
-        const FLOOR_NM: f64 = 0.005;
+    /// from 0.95 N(0, sd²) + 0.05 N(0, (5 sd)²), at least 13 nodes, spaced at most `spacing` (nm),
+    /// at most 2001; one node if `sd` is zero.
+    pub fn offset(sd: f64, reach: f64, spacing: f64) -> Self {
+        const FLOOR_NM: f64 = 0.001;
         if sd <= 0.0 {
             return Self::fixed(0.0);
         }
         let half = reach * sd;
-        let wanted = 1.0 + (2.0 * half / (0.5 * finest.max(FLOOR_NM))).ceil();
+        let wanted = 1.0 + (2.0 * half / spacing.max(FLOOR_NM)).ceil();
         // An odd count keeps a node at zero.
         let count = (wanted.clamp(13.0, 2001.0) as usize) | 1;
         let nodes = Array1::linspace(-half, half, count);
@@ -108,7 +108,7 @@ mod tests {
 
     #[test]
     fn offset_nodes_are_fine_enough_and_bounded() {
-        let q = Quadrature::offset(0.3, 3.2, 0.05);
+        let q = Quadrature::offset(0.3, 3.2, 0.025);
         let step = q.nodes()[1] - q.nodes()[0];
         assert!(step <= 0.025 + 1e-12, "step {step}");
         assert_eq!(Quadrature::offset(0.3, 3.2, 3.0).len(), 13);

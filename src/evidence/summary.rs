@@ -227,10 +227,7 @@ impl View {
 
     /// Candidate, line index and φ of the part that holds most of a realised line.
     fn owner(&self, line: &Realised) -> (usize, usize) {
-        line.parts
-            .iter()
-            .max_by(|a, b| a.2.total_cmp(&b.2))
-            .map_or((0, 0), |(m, i, _)| (self.members[*m], *i))
+        (self.members[line.owner.0], line.owner.1)
     }
 
     /// Number of readings that a candidate most likely caused.

@@ -209,12 +209,17 @@ fn flags_and_combinations_are_checked_too() {
 fn blind_stretches_are_merged_clipped_and_ascending() {
     let setup = from_toml(
         "[instrument]\nrange_nm = [380, 700]\nfilter = \"cobalt-glass\"\n\
-         blind_nm = [[690, 750], [300, 395], [560, 580], [200, 210]]\n",
+         blind_nm = [[690, 750], [300, 395], [560, 580], [200, 210], [450, 480], [460, 470]]\n",
     );
     assert_eq!(setup.seen_range(), [390.0, 700.0]);
     assert_eq!(
         setup.blind_stretches(),
-        [[390.0, 395.0], [560.0, 610.0], [690.0, 700.0]]
+        [
+            [390.0, 395.0],
+            [450.0, 480.0],
+            [560.0, 610.0],
+            [690.0, 700.0]
+        ]
     );
     assert!(setup.is_blind(610.0) && !setup.is_blind(610.1));
 }

@@ -70,6 +70,30 @@ fn two_observers_pool_where_one_would_not() {
 }
 
 #[test]
+fn the_rules_end_where_they_say() {
+    // 2·hypot(.3, .3) = .8485 for two observers, w/2 = .4 and 2·hypot(.1, .1) = .2828 for one.
+    for (u, apart, same_observer, readings) in [
+        (0.3, 0.848, false, 1),
+        (0.3, 0.849, false, 2),
+        (0.3, 0.399, true, 1),
+        (0.3, 0.401, true, 2),
+        (0.1, 0.282, true, 1),
+        (0.1, 0.283, true, 2),
+    ] {
+        let other = if same_observer { "Ada" } else { "Ben" };
+        let rows = vec![
+            by("Ada", nm(2, 500.0, u)),
+            by(other, nm(3, 500.0 + apart, u)),
+        ];
+        assert_eq!(
+            reduced(rows, ccd()).readings.len(),
+            readings,
+            "u {u}, {apart} nm apart"
+        );
+    }
+}
+
+#[test]
 fn two_observers_of_a_doublet_give_two_readings() {
     let readings = vec![
         by("Ada", nm(2, 589.00, 0.15)),
@@ -104,6 +128,39 @@ fn linkage_is_complete() {
         .map(|r| r.rows)
         .collect();
     assert_eq!(rows, [vec![2, 3], vec![4]]);
+}
+
+#[test]
+fn rows_at_one_position_are_taken_in_an_order_of_their_own() {
+    // The coarse row may pool with the first (.25 < .4), the fine one may not (.25 > .2236): were the
+    // order that of the table, the coarse row would go to one or the other.
+    for (fine, coarse) in [(3, 4), (4, 3)] {
+        let readings = vec![
+            nm(2, 499.75, 0.1),
+            nm(fine, 500.0, 0.05),
+            nm(coarse, 500.0, 0.2),
+        ];
+        let rows: Vec<_> = reduced(readings, ccd())
+            .readings
+            .into_iter()
+            .map(|r| r.rows)
+            .collect();
+        assert_eq!(rows, [vec![2], vec![3, 4]]);
+    }
+    // Likewise Ben's row may pool with Ada's first (.45 < .566) and Ada's second may not (.45 > .4).
+    for (ada, ben) in [(3, 4), (4, 3)] {
+        let readings = vec![
+            by("Ada", nm(2, 499.55, 0.2)),
+            by("Ada", nm(ada, 500.0, 0.2)),
+            by("Ben", nm(ben, 500.0, 0.2)),
+        ];
+        let rows: Vec<_> = reduced(readings, ccd())
+            .readings
+            .into_iter()
+            .map(|r| r.rows)
+            .collect();
+        assert_eq!(rows, [vec![2], vec![3, 4]]);
+    }
 }
 
 #[test]

@@ -43,6 +43,24 @@ proptest! {
     }
 
     #[test]
+    fn a_table_written_in_another_order_reduces_to_the_same_numbers(
+        (rows, shuffled) in some_rows().prop_flat_map(|rows| (Just(rows.clone()), Just(rows).prop_shuffle()))
+    ) {
+        let renumbered = shuffled.into_iter().enumerate().map(|(i, row)| Reading { row: i + 2, ..row });
+        let numbers = |sample: ReducedSample| {
+            let row = |r: ReducedReading| {
+                let y = r.strength.map_or(-1.0, |s| s.above_faintest_dex);
+                [r.wavelength_nm, r.uncertainty_nm, y].map(|number| (number * 1e6).round())
+            };
+            let mut numbers: Vec<[f64; 3]> = sample.readings.into_iter().map(row).collect();
+            numbers.sort_by(|a, b| a.partial_cmp(b).unwrap());
+            numbers
+        };
+        let again = reduced(renumbered.collect(), ccd());
+        prop_assert_eq!(numbers(reduced(rows, ccd())), numbers(again));
+    }
+
+    #[test]
     fn every_row_is_in_exactly_one_place(rows in some_rows()) {
         let expected: Vec<usize> = rows.iter().map(|row| row.row).collect();
         let sample = reduced(rows, ccd());
