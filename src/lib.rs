@@ -12,4 +12,5 @@ pub mod setup;
 pub mod evidence;
 pub mod verdict;
 pub mod report;
+pub mod store;
 pub mod cli;
