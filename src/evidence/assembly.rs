@@ -117,6 +117,9 @@ pub struct Workspace {
     reading: Vec<usize>,
     /// r of pair q at shift d: `r[d * pairs + q]`.
     r: Vec<f64>,
+    /// Number of shifts in `r`.
+    shifts: usize,
+    flat: Vec<f64>,
 }
 
 impl Assembly {
@@ -185,15 +188,14 @@ impl Assembly {
         let skip = without.and_then(|j| segment.readings.iter().position(|r| *r == j));
         for bars in 0..1usize << barred.len() {
             let is_barred = |member: usize| barred.iter().position(|b| *b == member).is_some_and(|i| bars >> i & 1 == 1);
-            for d in 0..shifts.len() {
-                out.push(sum_at(stock, segment, work, d, &is_barred, skip));
-            }
+            sums(stock, segment, work, &is_barred, skip, out);
         }
         ln_missing
     }
 
     /// Computes the lines of a segment as they look in one latent state, and all r.
     fn realise(&self, stock: &Stock, segment: &Segment, latents: &[Latent], shifts: &[usize], work: &mut Workspace) -> f64 {
+        work.shifts = shifts.len();
         work.lines.clear();
         work.reading.clear();
         // Chains append their positions shift by shift; singles look theirs up: both go through
@@ -312,7 +314,9 @@ impl Assembly {
     pub fn causes(&self, stock: &Stock, segment: &Segment, latents: &[Latent], shift: usize, lane: usize) -> Vec<(Realised, Vec<(usize, f64)>)> {
         let mut work = Workspace::default();
         self.realise(stock, segment, latents, &[shift], &mut work);
-        let whole = sum_at(stock, segment, &mut work, 0, &|_| false, None)[lane];
+        let mut out = Vec::new();
+        sums(stock, segment, &mut work, &|_| false, None, &mut out);
+        let whole = out[0][lane];
         let lines = work.lines.clone();
         let r: Vec<f64> = work.r.clone();
         let readings = work.reading.clone();
@@ -328,7 +332,9 @@ impl Assembly {
                         for other in line.pairs.clone() {
                             work.r[other] = 0.0;
                         }
-                        let rest = sum_at(stock, segment, &mut work, 0, &|_| false, Some(readings[q]))[lane];
+                        out.clear();
+                        sums(stock, segment, &mut work, &|_| false, Some(readings[q]), &mut out);
+                        let rest = out[0][lane];
                         work.r.copy_from_slice(&r);
                         let ln = (r[q] * stock.lane_scale[lane]).ln() + rest - whole;
                         (segment.readings[readings[q]], ln.exp().min(1.0))
@@ -340,33 +346,54 @@ impl Assembly {
     }
 }
 
-/// The sum over matchings at one shift. `r` is pair-major: `r[q * shifts + d]`.
-fn sum_at(
+/// Appends the sums over matchings of a realised segment, one per shift. `r` is pair-major:
+/// `r[q * shifts + d]`.
+fn sums(
     stock: &Stock,
     segment: &Segment,
     work: &mut Workspace,
-    d: usize,
     is_barred: &dyn Fn(usize) -> bool,
     skip: Option<usize>,
-) -> Lanes {
-    let Workspace { matching, lines, reading, r } = work;
+    out: &mut Vec<Lanes>,
+) {
+    let Workspace { matching, lines, reading, r, shifts, flat } = work;
+    let stride = *shifts;
     if reading.is_empty() {
-        return [0.0; LANES];
+        out.resize(out.len() + stride, [0.0; LANES]);
+        return;
     }
-    let stride = r.len() / reading.len();
     // A blend is caused by the member that holds most of it.
     let free = |line: &&Realised| !is_barred(line.owner.0);
-    let gate = 0.01 * stock.scene.settings.gate;
-    let r_of = |q: usize| if skip == Some(reading[q]) { 0.0 } else { r[q * stride + d] };
+    let gate = 0.1 * stock.scene.settings.gate;
+    let row = |q: usize| &r[q * stride..][..stride];
+    let counts = |q: &usize| skip != Some(reading[*q]) && row(*q).iter().any(|r| *r > gate);
     if segment.readings.len() == 1 || lines.len() == 1 {
-        let sum: f64 = lines.iter().filter(free).flat_map(|l| l.pairs.clone()).map(r_of).sum();
-        return std::array::from_fn(|l| (sum * stock.lane_scale[l]).ln_1p());
+        flat.clear();
+        flat.resize(stride, 0.0);
+        for q in lines.iter().filter(free).flat_map(|l| l.pairs.clone()).filter(counts) {
+            for (sum, r) in flat.iter_mut().zip(row(q)) {
+                *sum += r;
+            }
+        }
+        out.extend(flat.iter().map(|sum| stock.lane_scale.map(|scale| (sum * scale).ln_1p())));
+        return;
     }
-    matching.clear();
+    matching.clear(stride * LANES);
     for line in lines.iter().filter(free) {
-        matching.push(line.pairs.clone().map(|q| (reading[q], r_of(q))).filter(|(_, r)| *r > gate));
+        for q in line.pairs.clone().filter(counts) {
+            matching.pair(reading[q], |to| {
+                for (to, r) in to.chunks_exact_mut(LANES).zip(row(q)) {
+                    for (to, scale) in to.iter_mut().zip(stock.lane_scale) {
+                        *to = r * scale;
+                    }
+                }
+            });
+        }
+        matching.end_feature();
     }
-    matching.ln_sum(&stock.lane_scale)
+    flat.clear();
+    matching.ln_sums(flat);
+    out.extend(flat.chunks_exact(LANES).map(|c| std::array::from_fn(|l| c[l])));
 }
 
 /// The member that holds the largest share of a blend, with its strongest line there.

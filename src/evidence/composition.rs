@@ -27,8 +27,14 @@ pub struct Weighed {
 const CERTAIN: f64 = 1e-7;
 /// Most members barred in turn: 2^6 sets.
 const MOST_BARRED: usize = 6;
-/// Shift nodes below this share of the best are left out.
-const NEGLIGIBLE_LN: f64 = -18.0;
+/// Shift and amount nodes this far below the best, in ln, are left out.
+const NEGLIGIBLE_LN: f64 = -12.0;
+/// Before the amounts have settled, only shift nodes this far below are.
+const HOPELESS_LN: f64 = -30.0;
+/// Amount nodes this far below the best keep the emitter shifts of the mode.
+const MINOR_LN: f64 = -8.0;
+/// A better amount met while integrating, in nats, is worth climbing to.
+const BETTER_LN: f64 = 0.05;
 
 /// ln Σ w over shift nodes and lanes.
 pub fn ln_total(stock: &Stock, nodes: &[Lanes]) -> f64 {
@@ -63,9 +69,9 @@ pub fn weigh(stock: &Stock, members: &[usize], start: &[Latent], barring: bool) 
             if barring && profile.bar_more() {
                 profile.climb();
             }
-            profile.product()
+            profile.product_at_best()
         }
-        MixtureRule::Joint => profile.joint(),
+        MixtureRule::Joint => profile.joint(barring),
     };
     Weighed {
         members: members.to_vec(),
@@ -369,20 +375,18 @@ impl<'s, 'a> Profile<'s, 'a> {
     pub fn climb(&mut self) {
         const MOST_SWEEPS: usize = 8;
         self.choose_start();
-        let members = self.assembly.members.len();
-        for sweep in 0..MOST_SWEEPS {
+        self.drop_shifts(HOPELESS_LN);
+        for _ in 0..MOST_SWEEPS {
             let mut moved = false;
-            for m in 0..members {
+            for m in 0..self.assembly.members.len() {
                 moved |= self.climb_amount(m);
                 moved |= self.climb_shifts(m);
-            }
-            if sweep == 0 {
-                self.drop_negligible_shifts();
             }
             if !moved {
                 break;
             }
         }
+        self.drop_shifts(NEGLIGIBLE_LN);
     }
 
     /// Coordinate ascent can stop on a ridge: begins from the best of the present state and
@@ -408,15 +412,28 @@ impl<'s, 'a> Profile<'s, 'a> {
         }
     }
 
+    /// Walks uphill along the amount of one member.
     fn climb_amount(&mut self, m: usize) -> bool {
-        let mut best = (f64::NEG_INFINITY, self.latents[m].amount);
-        for (k, point) in self.amounts(m) {
-            let value = self.ln_weighted(&point.slice);
-            if value > best.0 {
-                best = (value, k);
+        let count = self.stock.scene.amount.len() as isize;
+        let start = self.latents[m].amount;
+        let mut best = (self.ln_weighted(&self.present()), start);
+        for direction in [1isize, -1] {
+            // Two nodes in a row must fall before the walk turns back.
+            let mut falls = 0;
+            let mut k = start as isize + direction;
+            while (0..count).contains(&k) && falls < 2 {
+                let point = self.point(m, k as usize);
+                let value = self.ln_weighted(&point.slice);
+                if value > best.0 {
+                    best = (value, k as usize);
+                    falls = 0;
+                } else {
+                    falls += 1;
+                }
+                k += direction;
             }
         }
-        if best.1 == self.latents[m].amount {
+        if best.1 == start {
             return false;
         }
         self.latents[m].amount = best.1;
@@ -491,7 +508,7 @@ impl<'s, 'a> Profile<'s, 'a> {
     }
 
     /// Leaves out shifts that carry nothing at the present state.
-    fn drop_negligible_shifts(&mut self) {
+    fn drop_shifts(&mut self, below_ln: f64) {
         let now = self.present();
         let weights = self.stock.scene.offset.weights();
         let per_shift: Vec<f64> = now
@@ -510,7 +527,7 @@ impl<'s, 'a> Profile<'s, 'a> {
             .shifts
             .iter()
             .zip(&per_shift)
-            .filter(|(_, ln)| **ln - best > NEGLIGIBLE_LN)
+            .filter(|(_, ln)| **ln - best > below_ln)
             .map(|(d, _)| *d)
             .collect();
         if kept.len() < self.shifts.len() {
@@ -574,8 +591,37 @@ impl<'s, 'a> Profile<'s, 'a> {
         }
     }
 
+    /// The product approximation; moves to a better mode where integrating meets one.
+    fn product_at_best(&mut self) -> Vec<Lanes> {
+        const MOST_MOVES: usize = 3;
+        for _ in 0..MOST_MOVES {
+            let moves: Vec<bool> = (0..self.assembly.members.len()).map(|m| self.jump(m)).collect();
+            if !moves.contains(&true) {
+                break;
+            }
+            self.climb();
+        }
+        self.product()
+    }
+
+    /// Moves one member to the best of all its amounts, if that is better by more than a trifle.
+    fn jump(&mut self, m: usize) -> bool {
+        let present = self.ln_weighted(&self.present());
+        let best = self
+            .amounts(m)
+            .iter()
+            .map(|(k, point)| (self.ln_weighted(&point.slice), *k))
+            .fold((present, self.latents[m].amount), |a, b| if b.0 > a.0 { b } else { a });
+        if best.0 <= present + BETTER_LN {
+            return false;
+        }
+        self.latents[m].amount = best.1;
+        self.settle();
+        true
+    }
+
     /// The product approximation about the mode, on all shift nodes.
-    pub fn product(&mut self) -> Vec<Lanes> {
+    fn product(&mut self) -> Vec<Lanes> {
         let mode = self.present();
         let mut total = mode.clone();
         for m in 0..self.assembly.members.len() {
@@ -586,7 +632,12 @@ impl<'s, 'a> Profile<'s, 'a> {
     }
 
     /// The full joint grid, on all shift nodes.
-    fn joint(&mut self) -> Vec<Lanes> {
+    fn joint(&mut self, barring: bool) -> Vec<Lanes> {
+        if barring {
+            self.doubtful = (0..self.assembly.members.len()).collect();
+            self.place_bars();
+            self.refresh();
+        }
         let all: Vec<usize> = (0..self.assembly.segments.len()).collect();
         let mut states: Vec<(Vec<Latent>, f64)> = vec![(Vec::new(), 0.0)];
         for candidate in &self.assembly.members {
@@ -728,7 +779,7 @@ fn grid(stock: &Stock, prepared: &super::prepare::Prepared) -> Vec<(Latent, f64)
 
 /// Whether a point carries enough of its profile to integrate its emitter shifts.
 fn point_counts(point: &Point, best: f64) -> bool {
-    peak(&point.slice) > best - 12.0
+    peak(&point.slice) > best + MINOR_LN
 }
 
 fn value_in(changed: &[Replaced], segment: usize) -> Option<&Value> {

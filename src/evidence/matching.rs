@@ -15,98 +15,121 @@ pub type Lanes = [f64; LANES];
 const FRONTIER: usize = 12;
 
 /// Features with the readings they may have caused, and working memory for the sum.
+///
+/// Sums for several columns (a node of the common shift in one clutter lane each) run side by
+/// side: the pattern of matchings is the same in all of them.
 #[derive(Debug, Default, Clone)]
 pub struct Matching {
-    /// (reading, r at κ_ref), feature after feature.
-    pairs: Vec<(usize, f64)>,
-    /// End of each feature in `pairs`.
+    columns: usize,
+    /// Reading of each pair, feature after feature.
+    readings: Vec<usize>,
+    /// r of each pair, a row of columns per pair.
+    r: Vec<f64>,
+    /// End of each feature in `readings`.
     ends: Vec<usize>,
     /// Last feature that reaches each reading.
     last: Vec<usize>,
     /// Frontier: the reading of each bit.
     active: Vec<usize>,
-    states: Vec<Lanes>,
-    row: Vec<(usize, f64)>,
+    /// A row of columns per mask.
+    states: Vec<f64>,
+    /// (bit, pair) of the feature being taken.
+    row: Vec<(usize, usize)>,
 }
 
 impl Matching {
     /// Forgets all features.
-    pub fn clear(&mut self) {
-        self.pairs.clear();
+    pub fn clear(&mut self, columns: usize) {
+        self.columns = columns;
+        self.readings.clear();
+        self.r.clear();
         self.ends.clear();
     }
 
-    /// Adds a feature; order by wavelength keeps the frontier short. Features without readings
-    /// are left out.
-    pub fn push(&mut self, pairs: impl Iterator<Item = (usize, f64)>) {
-        let before = self.pairs.len();
-        self.pairs.extend(pairs);
-        if self.pairs.len() > before {
-            self.ends.push(self.pairs.len());
+    /// Adds a pair of the feature being built; `fill` writes r for every column.
+    pub fn pair(&mut self, reading: usize, fill: impl FnOnce(&mut [f64])) {
+        let start = self.r.len();
+        self.r.resize(start + self.columns, 0.0);
+        fill(&mut self.r[start..]);
+        self.readings.push(reading);
+    }
+
+    /// Ends the feature being built; features without pairs are left out. Order by wavelength
+    /// keeps the frontier short.
+    pub fn end_feature(&mut self) {
+        if self.ends.last().copied().unwrap_or(0) < self.readings.len() {
+            self.ends.push(self.readings.len());
         }
     }
 
-    /// ln Σ over matchings Π r, per lane; `scale[l]` = κ_ref/κ_l multiplies every r in lane l.
-    pub fn ln_sum(&mut self, scale: &Lanes) -> Lanes {
-        let readings = self.pairs.iter().map(|(j, _)| j + 1).max().unwrap_or(0);
+    /// Appends ln Σ over matchings Π r for every column.
+    pub fn ln_sums(&mut self, out: &mut Vec<f64>) {
+        let count = self.readings.iter().max().map_or(0, |j| j + 1);
         self.last.clear();
-        self.last.resize(readings, 0);
+        self.last.resize(count, 0);
         let mut start = 0;
         for (feature, end) in self.ends.iter().enumerate() {
-            for (j, _) in &self.pairs[start..*end] {
+            for j in &self.readings[start..*end] {
                 self.last[*j] = feature;
             }
             start = *end;
         }
         self.active.clear();
         self.states.clear();
-        self.states.push([1.0; LANES]);
-        let mut ln_scale = [0.0; LANES];
+        self.states.resize(self.columns, 1.0);
+        let first = out.len();
+        out.resize(first + self.columns, 0.0);
         let mut start = 0;
         for feature in 0..self.ends.len() {
             let end = self.ends[feature];
-            self.take(start, end, scale);
+            self.take(start, end);
             start = end;
             self.retire(feature);
-            rescale(&mut self.states, &mut ln_scale);
+            if self.active.is_empty() || feature % 8 == 7 {
+                rescale(&mut self.states, &mut out[first..]);
+            }
         }
-        std::array::from_fn(|l| self.states.iter().map(|s| s[l]).sum::<f64>().ln() + ln_scale[l])
+        for (ln, sum) in out[first..].iter_mut().zip(self.states.iter()) {
+            *ln += sum.ln();
+        }
     }
 
     /// Lets one more feature take at most one free reading. Masks descend so that the state a
     /// match comes from has not yet seen this feature.
-    fn take(&mut self, start: usize, end: usize, scale: &Lanes) {
+    fn take(&mut self, start: usize, end: usize) {
         self.row.clear();
-        for (reading, r) in &self.pairs[start..end] {
-            let bit = match self.active.iter().position(|a| a == reading) {
+        for pair in start..end {
+            let reading = self.readings[pair];
+            let bit = match self.active.iter().position(|a| *a == reading) {
                 Some(bit) => bit,
                 None if self.active.len() < FRONTIER => {
-                    self.active.push(*reading);
-                    self.states.resize(self.states.len() * 2, [0.0; LANES]);
+                    self.active.push(reading);
+                    self.states.resize(self.states.len() * 2, 0.0);
                     self.active.len() - 1
                 }
                 None => continue,
             };
-            self.row.push((1 << bit, *r));
+            self.row.push((1 << bit, pair));
         }
-        for mask in (1..self.states.len()).rev() {
-            let mut gain = [0.0; LANES];
-            for (bit, r) in &self.row {
+        let width = self.columns;
+        for mask in (1..self.states.len() / width).rev() {
+            let (below, from_here) = self.states.split_at_mut(mask * width);
+            let here = &mut from_here[..width];
+            for (bit, pair) in &self.row {
                 if mask & bit != 0 {
-                    let from = &self.states[mask ^ bit];
-                    for l in 0..LANES {
-                        gain[l] += from[l] * (r * scale[l]);
+                    let from = &below[(mask ^ bit) * width..][..width];
+                    let r = &self.r[pair * width..][..width];
+                    for ((to, from), r) in here.iter_mut().zip(from).zip(r) {
+                        *to += from * r;
                     }
                 }
-            }
-            for l in 0..LANES {
-                self.states[mask][l] += gain[l];
             }
         }
     }
 
     /// Forgets whether readings were taken that no later feature reaches.
     fn retire(&mut self, feature: usize) {
+        let width = self.columns;
         let mut bit = 0;
         while bit < self.active.len() {
             if self.last[self.active[bit]] > feature {
@@ -115,30 +138,33 @@ impl Matching {
             }
             self.active.remove(bit);
             let low = (1usize << bit) - 1;
-            let half = self.states.len() / 2;
+            let half = self.states.len() / width / 2;
             for mask in 0..half {
                 // Spread the mask around the bit that goes: it never lies before the mask itself.
                 let open = (mask & low) | ((mask & !low) << 1);
-                let (free, taken) = (self.states[open], self.states[open | 1 << bit]);
-                for l in 0..LANES {
-                    self.states[mask][l] = free[l] + taken[l];
+                let taken = open | 1 << bit;
+                for column in 0..width {
+                    self.states[mask * width + column] =
+                        self.states[open * width + column] + self.states[taken * width + column];
                 }
             }
-            self.states.truncate(half);
+            self.states.truncate(half * width);
         }
     }
 }
 
-/// Keeps long products within range: each lane on its own scale.
-fn rescale(states: &mut [Lanes], ln_scale: &mut Lanes) {
-    const HIGH: f64 = 1e100;
-    for l in 0..LANES {
-        let peak = states.iter().map(|s| s[l]).fold(0.0, f64::max);
-        if peak > HIGH {
-            ln_scale[l] += peak.ln();
-            for state in states.iter_mut() {
-                state[l] /= peak;
-            }
+/// Keeps long products within range: each column on its own scale.
+fn rescale(states: &mut [f64], ln_scale: &mut [f64]) {
+    const HIGH: f64 = 1e60;
+    if states.iter().all(|s| *s < HIGH) {
+        return;
+    }
+    let width = ln_scale.len();
+    for (column, ln) in ln_scale.iter_mut().enumerate() {
+        let peak = states.iter().skip(column).step_by(width).copied().fold(0.0, f64::max);
+        if peak > 1.0 {
+            *ln += peak.ln();
+            states.iter_mut().skip(column).step_by(width).for_each(|s| *s /= peak);
         }
     }
 }
@@ -161,12 +187,22 @@ mod tests {
         sum
     }
 
-    fn frontier(rows: &[Vec<(usize, f64)>], scale: Lanes) -> Lanes {
+    fn frontier(rows: &[Vec<(usize, f64)>], scale: Lanes) -> Vec<f64> {
         let mut matching = Matching::default();
+        matching.clear(LANES);
         for row in rows {
-            matching.push(row.iter().copied());
+            for (j, r) in row {
+                matching.pair(*j, |to| {
+                    for (to, scale) in to.iter_mut().zip(scale) {
+                        *to = r * scale;
+                    }
+                });
+            }
+            matching.end_feature();
         }
-        matching.ln_sum(&scale)
+        let mut out = Vec::new();
+        matching.ln_sums(&mut out);
+        out
     }
 
     proptest::proptest! {

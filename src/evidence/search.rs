@@ -21,11 +21,11 @@ pub struct Found {
 }
 
 /// Nats allowed for what the bound does not prove: amounts shifting when substances are added.
-const AMOUNT_MARGIN: f64 = 0.7;
+const AMOUNT_MARGIN: f64 = 0.5;
 /// Nats allowed per chain of blending lines, where the bound does not hold.
-const CHAIN_MARGIN: f64 = 1.0;
+const CHAIN_MARGIN: f64 = 0.25;
 /// Most nats allowed for chains together.
-const CHAIN_MARGIN_MOST: f64 = 4.0;
+const CHAIN_MARGIN_MOST: f64 = 1.0;
 /// Shift nodes further than this below the best do not bound gains.
 const RELEVANT_LN: f64 = -8.0;
 /// Compositions evaluated per round, whatever the number of threads.
