@@ -1,8 +1,10 @@
 //! The exact sum over matchings of features to readings.
 //!
-//! Each feature causes at most one reading and each reading has one cause. Features are taken in
-//! order; a frontier holds the readings that earlier features may have taken and later ones may
-//! still reach, a bit each. A reading is retired after its last feature.
+//! Each feature causes at most one reading and each reading has one cause. One side is taken in
+//! order; a frontier holds those of the other side that earlier ones may have taken and later
+//! ones may still reach, a bit each, and forgets each after its last partner. The sum is the same
+//! whichever side is taken in order: few readings among many lines keep the frontier short one
+//! way, a wide band over many readings the other.
 
 /// Lanes: one per node of the clutter rate.
 pub const LANES: usize = 4;
@@ -10,8 +12,8 @@ pub const LANES: usize = 4;
 /// A value per clutter node.
 pub type Lanes = [f64; LANES];
 
-/// At most this many readings in the frontier: 2^12 states. Where more crowd within reach of one
-/// another, a feature cannot take those that find no place.
+/// At most this many in the frontier: 2^12 states. Where more crowd within reach of one another,
+/// pairs that find no place are left out.
 const FRONTIER: usize = 12;
 
 /// Features with the readings they may have caused, and working memory for the sum.
@@ -21,19 +23,21 @@ const FRONTIER: usize = 12;
 #[derive(Debug, Default, Clone)]
 pub struct Matching {
     columns: usize,
-    /// Reading of each pair, feature after feature.
-    readings: Vec<usize>,
+    /// (feature, reading), feature after feature.
+    pairs: Vec<(usize, usize)>,
     /// r of each pair, a row of columns per pair.
     r: Vec<f64>,
-    /// End of each feature in `readings`.
-    ends: Vec<usize>,
-    /// Last feature that reaches each reading.
+    features: usize,
+    /// (taken in order, held in the frontier, pair).
+    order: Vec<(usize, usize, usize)>,
+    other_order: Vec<(usize, usize, usize)>,
+    /// Last place in the order of each one held in the frontier.
     last: Vec<usize>,
-    /// Frontier: the reading of each bit.
+    /// Frontier: who is behind each bit.
     active: Vec<usize>,
     /// A row of columns per mask.
     states: Vec<f64>,
-    /// (bit, pair) of the feature being taken.
+    /// (bit, pair) of the one being taken.
     row: Vec<(usize, usize)>,
 }
 
@@ -41,9 +45,9 @@ impl Matching {
     /// Forgets all features.
     pub fn clear(&mut self, columns: usize) {
         self.columns = columns;
-        self.readings.clear();
+        self.pairs.clear();
         self.r.clear();
-        self.ends.clear();
+        self.features = 0;
     }
 
     /// Adds a pair of the feature being built; `fill` writes r for every column.
@@ -51,65 +55,70 @@ impl Matching {
         let start = self.r.len();
         self.r.resize(start + self.columns, 0.0);
         fill(&mut self.r[start..]);
-        self.readings.push(reading);
+        self.pairs.push((self.features, reading));
     }
 
-    /// Ends the feature being built; features without pairs are left out. Order by wavelength
-    /// keeps the frontier short.
+    /// Ends the feature being built. Order by wavelength keeps the frontier short.
     pub fn end_feature(&mut self) {
-        if self.ends.last().copied().unwrap_or(0) < self.readings.len() {
-            self.ends.push(self.readings.len());
-        }
+        self.features += 1;
     }
 
     /// Appends ln Σ over matchings Π r for every column.
     pub fn ln_sums(&mut self, out: &mut Vec<f64>) {
-        let count = self.readings.iter().max().map_or(0, |j| j + 1);
-        self.last.clear();
-        self.last.resize(count, 0);
-        let mut start = 0;
-        for (feature, end) in self.ends.iter().enumerate() {
-            for j in &self.readings[start..*end] {
-                self.last[*j] = feature;
-            }
-            start = *end;
-        }
+        self.choose_side();
         self.active.clear();
         self.states.clear();
         self.states.resize(self.columns, 1.0);
         let first = out.len();
         out.resize(first + self.columns, 0.0);
         let mut start = 0;
-        for feature in 0..self.ends.len() {
-            let end = self.ends[feature];
+        let mut taken = 0;
+        while start < self.order.len() {
+            let outer = self.order[start].0;
+            let end = start + self.order[start..].iter().take_while(|o| o.0 == outer).count();
             self.take(start, end);
-            start = end;
-            self.retire(feature);
-            if self.active.is_empty() || feature % 8 == 7 {
+            self.retire(end - 1);
+            taken += 1;
+            if self.active.is_empty() || taken % 8 == 0 {
                 rescale(&mut self.states, &mut out[first..]);
             }
+            start = end;
         }
         for (ln, sum) in out[first..].iter_mut().zip(self.states.iter()) {
             *ln += sum.ln();
         }
     }
 
-    /// Lets one more feature take at most one free reading. Masks descend so that the state a
-    /// match comes from has not yet seen this feature.
+    /// Takes features or readings in order, whichever is cheaper.
+    fn choose_side(&mut self) {
+        self.order.clear();
+        self.order.extend(self.pairs.iter().enumerate().map(|(p, (i, j))| (*i, *j, p)));
+        self.other_order.clear();
+        self.other_order.extend(self.pairs.iter().enumerate().map(|(p, (i, j))| (*j, *i, p)));
+        self.other_order.sort_unstable();
+        let by_feature = cost(&self.order, &mut self.last);
+        if cost(&self.other_order, &mut self.last) < by_feature {
+            std::mem::swap(&mut self.order, &mut self.other_order);
+        } else {
+            cost(&self.order, &mut self.last);
+        }
+    }
+
+    /// Lets one more take at most one free partner. Masks descend so that the state a match comes
+    /// from has not yet seen this one.
     fn take(&mut self, start: usize, end: usize) {
         self.row.clear();
-        for pair in start..end {
-            let reading = self.readings[pair];
-            let bit = match self.active.iter().position(|a| *a == reading) {
+        for (_, inner, pair) in &self.order[start..end] {
+            let bit = match self.active.iter().position(|a| a == inner) {
                 Some(bit) => bit,
                 None if self.active.len() < FRONTIER => {
-                    self.active.push(reading);
+                    self.active.push(*inner);
                     self.states.resize(self.states.len() * 2, 0.0);
                     self.active.len() - 1
                 }
                 None => continue,
             };
-            self.row.push((1 << bit, pair));
+            self.row.push((1 << bit, *pair));
         }
         let width = self.columns;
         for mask in (1..self.states.len() / width).rev() {
@@ -127,12 +136,12 @@ impl Matching {
         }
     }
 
-    /// Forgets whether readings were taken that no later feature reaches.
-    fn retire(&mut self, feature: usize) {
+    /// Forgets whether partners were taken that none later in the order reaches.
+    fn retire(&mut self, place: usize) {
         let width = self.columns;
         let mut bit = 0;
         while bit < self.active.len() {
-            if self.last[self.active[bit]] > feature {
+            if self.last[self.active[bit]] > place {
                 bit += 1;
                 continue;
             }
@@ -151,6 +160,29 @@ impl Matching {
             self.states.truncate(half * width);
         }
     }
+}
+
+/// Multiplications the sum would cost; fills in the last place of each one held.
+fn cost(order: &[(usize, usize, usize)], last: &mut Vec<usize>) -> f64 {
+    let count = order.iter().map(|o| o.1 + 1).max().unwrap_or(0);
+    last.clear();
+    last.resize(count, usize::MAX);
+    for (place, (_, inner, _)) in order.iter().enumerate() {
+        last[*inner] = place;
+    }
+    let mut open = 0i32;
+    let mut total = 0.0;
+    let mut first_seen = vec![true; count];
+    for (place, (_, inner, _)) in order.iter().enumerate() {
+        if std::mem::replace(&mut first_seen[*inner], false) {
+            open += 1;
+        }
+        total += f64::from(open.min(FRONTIER as i32)).exp2();
+        if last[*inner] == place {
+            open -= 1;
+        }
+    }
+    total
 }
 
 /// Keeps long products within range: each column on its own scale.
