@@ -121,6 +121,7 @@ fn check(path: &Path) {
             prior: c.prior,
             shows: 1.0,
             emitter_spread_dex: vec![0.0],
+            emitter_shows: vec![1.0],
             features: c
                 .features
                 .iter()

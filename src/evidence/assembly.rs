@@ -120,6 +120,10 @@ pub struct Workspace {
     /// Number of shifts in `r`.
     shifts: usize,
     flat: Vec<f64>,
+    /// Pairs that count, by line.
+    live: Vec<Vec<usize>>,
+    /// Σ r of lines that reach only one reading, by reading and shift.
+    rivals: Vec<f64>,
 }
 
 impl Assembly {
@@ -356,33 +360,29 @@ fn sums(
     skip: Option<usize>,
     out: &mut Vec<Lanes>,
 ) {
-    let Workspace { matching, lines, reading, r, shifts, flat } = work;
-    let stride = *shifts;
-    if reading.is_empty() {
-        out.resize(out.len() + stride, [0.0; LANES]);
+    if work.reading.is_empty() {
+        out.resize(out.len() + work.shifts, [0.0; LANES]);
         return;
     }
-    // A blend is caused by the member that holds most of it.
-    let free = |line: &&Realised| !is_barred(line.owner.0);
-    let gate = 0.1 * stock.scene.settings.gate;
-    let row = |q: usize| &r[q * stride..][..stride];
-    let counts = |q: &usize| skip != Some(reading[*q]) && row(*q).iter().any(|r| *r > gate);
-    if segment.readings.len() == 1 || lines.len() == 1 {
+    work.find_live(stock.scene.settings.gate, is_barred, skip);
+    let Workspace { matching, live, reading, r, shifts, flat, .. } = work;
+    let row = |q: usize| &r[q * *shifts..][..*shifts];
+    if segment.readings.len() == 1 || live.len() == 1 {
         flat.clear();
-        flat.resize(stride, 0.0);
-        for q in lines.iter().filter(free).flat_map(|l| l.pairs.clone()).filter(counts) {
-            for (sum, r) in flat.iter_mut().zip(row(q)) {
+        flat.resize(*shifts, 0.0);
+        for q in live.iter().flatten() {
+            for (sum, r) in flat.iter_mut().zip(row(*q)) {
                 *sum += r;
             }
         }
         out.extend(flat.iter().map(|sum| stock.lane_scale.map(|scale| (sum * scale).ln_1p())));
         return;
     }
-    matching.clear(stride * LANES);
-    for line in lines.iter().filter(free) {
-        for q in line.pairs.clone().filter(counts) {
-            matching.pair(reading[q], |to| {
-                for (to, r) in to.chunks_exact_mut(LANES).zip(row(q)) {
+    matching.clear(*shifts * LANES);
+    for pairs in live.iter() {
+        for q in pairs {
+            matching.pair(reading[*q], |to| {
+                for (to, r) in to.chunks_exact_mut(LANES).zip(row(*q)) {
                     for (to, scale) in to.iter_mut().zip(stock.lane_scale) {
                         *to = r * scale;
                     }
@@ -394,6 +394,49 @@ fn sums(
     flat.clear();
     matching.ln_sums(flat);
     out.extend(flat.chunks_exact(LANES).map(|c| std::array::from_fn(|l| c[l])));
+}
+
+impl Workspace {
+    /// The pairs that count, line by line: r above the gate at some shift, and above it still
+    /// after a rival that can explain nothing else. A reading j with lines that reach only it,
+    /// Σ r = R, is left over with probability at most 1/(1 + R), so another pair there can carry
+    /// at most r/(1 + R).
+    fn find_live(&mut self, gate: f64, is_barred: &dyn Fn(usize) -> bool, skip: Option<usize>) {
+        const PASSES: usize = 2;
+        let gate = 0.1 * gate;
+        let Self { lines, reading, r, shifts, live, rivals, .. } = self;
+        let row = |q: usize| &r[q * *shifts..][..*shifts];
+        live.clear();
+        // A blend is caused by the member that holds most of it.
+        for line in lines.iter().filter(|l| !is_barred(l.owner.0)) {
+            let counts = |q: &usize| skip != Some(reading[*q]) && row(*q).iter().any(|r| *r > gate);
+            let pairs: Vec<usize> = line.pairs.clone().filter(counts).collect();
+            if !pairs.is_empty() {
+                live.push(pairs);
+            }
+        }
+        let count = reading.iter().max().map_or(0, |j| j + 1);
+        for _ in 0..PASSES {
+            if live.iter().all(|pairs| pairs.len() == 1) {
+                return;
+            }
+            rivals.clear();
+            rivals.resize(count * *shifts, 0.0);
+            for pairs in live.iter().filter(|pairs| pairs.len() == 1) {
+                let to = &mut rivals[reading[pairs[0]] * *shifts..][..*shifts];
+                for (to, r) in to.iter_mut().zip(row(pairs[0])) {
+                    *to += r;
+                }
+            }
+            for pairs in live.iter_mut().filter(|pairs| pairs.len() > 1) {
+                pairs.retain(|q| {
+                    let rivals = &rivals[reading[*q] * *shifts..][..*shifts];
+                    row(*q).iter().zip(rivals).any(|(r, rival)| *r > gate * (1.0 + rival))
+                });
+            }
+            live.retain(|pairs| !pairs.is_empty());
+        }
+    }
 }
 
 /// The member that holds the largest share of a blend, with its strongest line there.

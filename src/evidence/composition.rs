@@ -7,6 +7,8 @@ use super::matching::{LANES, Lanes};
 use super::settings::MixtureRule;
 use std::collections::HashMap;
 use std::rc::Rc;
+use std::sync::atomic::{AtomicUsize,Ordering};
+pub static CALLS:AtomicUsize=AtomicUsize::new(0);pub static MISS:AtomicUsize=AtomicUsize::new(0);pub static WEIGH:AtomicUsize=AtomicUsize::new(0);pub static COLS:AtomicUsize=AtomicUsize::new(0);pub static FIN:AtomicUsize=AtomicUsize::new(0);
 
 /// A composition with its evidence.
 #[derive(Debug, Clone)]
@@ -19,8 +21,12 @@ pub struct Weighed {
     pub nodes: Vec<Lanes>,
     /// The latent state with the largest weighted integrand.
     pub mode: Vec<Latent>,
+    /// ln L at the mode by shift node and lane, nothing barred; −∞ where left out.
+    pub mode_ln: Vec<Lanes>,
     /// Lines of different members that blend.
     pub chains: usize,
+    /// The newest member was added without moving the others.
+    pub rough: bool,
 }
 
 /// Members whose absence would matter less than this are not barred in turn.
@@ -52,15 +58,30 @@ pub fn weigh(stock: &Stock, members: &[usize], start: &[Latent], barring: bool) 
     let hopeless = barring && members.iter().any(|m| stock.prepared[*m].pairs.is_empty());
     if hopeless {
         let nodes = vec![[f64::NEG_INFINITY; LANES]; stock.scene.offset.len()];
-        let mode = start.to_vec();
-        return Weighed { members: members.to_vec(), ln_evidence: f64::NEG_INFINITY, nodes, mode, chains: 0 };
+        return Weighed {
+            members: members.to_vec(),
+            ln_evidence: f64::NEG_INFINITY,
+            mode_ln: nodes.clone(),
+            nodes,
+            mode: start.to_vec(),
+            chains: 0,
+            rough: false,
+        };
     }
     if members.is_empty() {
         let nodes = vec![[0.0; LANES]; stock.scene.offset.len()];
         let ln_evidence = ln_total(stock, &nodes);
-        return Weighed { members: Vec::new(), ln_evidence, nodes, mode: Vec::new(), chains: 0 };
+        return Weighed {
+            members: Vec::new(),
+            ln_evidence,
+            mode_ln: nodes.clone(),
+            nodes,
+            mode: Vec::new(),
+            chains: 0,
+            rough: false,
+        };
     }
-    let assembly = Assembly::new(stock, members);
+    WEIGH.fetch_add(1,Ordering::Relaxed);let assembly = Assembly::new(stock, members);
     let mut profile = Profile::new(stock, &assembly, start.to_vec(), barring);
     let nodes = match stock.scene.settings.mixture {
         MixtureRule::Product => {
@@ -77,8 +98,40 @@ pub fn weigh(stock: &Stock, members: &[usize], start: &[Latent], barring: bool) 
         members: members.to_vec(),
         ln_evidence: ln_total(stock, &nodes),
         nodes,
+        mode_ln: profile.ln_unbarred(),
         mode: profile.latents.clone(),
         chains: assembly.chains,
+        rough: false,
+    }
+}
+
+/// Adds one member to a composition without moving the others from their mode: a first, cheap
+/// estimate of E*(S ∪ x) = E*(S) · Σ_α w/Z (L(S ∪ x) − L(S ∪ x; x barred))/L(S) at the mode of S.
+///
+/// `members` and `start` are of the whole composition, `newest` the place of the added one.
+pub fn weigh_added(stock: &Stock, base: &Weighed, members: &[usize], start: &[Latent], newest: usize) -> Weighed {
+    let assembly = Assembly::new(stock, members);
+    let mut profile = Profile::new(stock, &assembly, start.to_vec(), false);
+    profile.shifts = (0..base.nodes.len()).filter(|d| base.mode_ln[*d][0].is_finite()).collect();
+    profile.doubtful = vec![newest];
+    profile.place_bars();
+    profile.refresh();
+    let mode: Slice = profile.shifts.iter().map(|d| base.mode_ln[*d]).collect();
+    let mut added = profile.member_profile(newest, &mode);
+    for (lanes, d) in added.iter_mut().zip(&profile.shifts) {
+        for l in 0..LANES {
+            lanes[l] += base.nodes[*d][l];
+        }
+    }
+    let nodes = profile.spread(added);
+    Weighed {
+        members: members.to_vec(),
+        ln_evidence: ln_total(stock, &nodes),
+        nodes,
+        mode_ln: Vec::new(),
+        mode: start.to_vec(),
+        chains: assembly.chains,
+        rough: true,
     }
 }
 
@@ -231,14 +284,14 @@ impl<'s, 'a> Profile<'s, 'a> {
     }
 
     fn evaluate(&mut self, segment: usize, latents: &[Latent], without: Option<usize>) -> Value {
-        let part = &self.assembly.segments[segment];
+        CALLS.fetch_add(1,Ordering::Relaxed);let part = &self.assembly.segments[segment];
         let key = (segment, self.assembly.state_key(self.stock, part, latents));
         if without.is_none()
             && let Some(known) = self.memo.get(&key)
         {
             return Rc::clone(known);
         }
-        let barred: Vec<usize> = self.local_bars[segment].iter().map(|i| self.doubtful[*i]).collect();
+        MISS.fetch_add(1,Ordering::Relaxed);COLS.fetch_add(self.shifts.len()<<self.local_bars[segment].len(),Ordering::Relaxed);let barred: Vec<usize> = self.local_bars[segment].iter().map(|i| self.doubtful[*i]).collect();
         let mut out = Vec::new();
         let missing =
             self.assembly
@@ -310,7 +363,7 @@ impl<'s, 'a> Profile<'s, 'a> {
 
     /// ln L* = ln Σ_B (−1)^|B| L(B barred) by shift and lane.
     fn finish(&self, latents: &[Latent], totals: &Totals) -> Slice {
-        let count = self.shifts.len();
+        FIN.fetch_add(self.shifts.len()<<self.doubtful.len(),Ordering::Relaxed);let count = self.shifts.len();
         let missing = self.own_missing(latents) + totals.missing;
         let sets = 1usize << self.doubtful.len();
         (0..count)
@@ -328,6 +381,13 @@ impl<'s, 'a> Profile<'s, 'a> {
                 })
             })
             .collect()
+    }
+
+    /// ln L at the present state, nothing barred, on all shift nodes.
+    fn ln_unbarred(&self) -> Vec<Lanes> {
+        let missing = self.own_missing(&self.latents) + self.totals.missing;
+        let count = self.shifts.len();
+        self.spread(self.totals.ln[..count].iter().map(|lanes| lanes.map(|x| x + missing)).collect())
     }
 
     fn present(&self) -> Slice {

@@ -92,6 +92,8 @@ pub struct Candidate {
     pub shows: f64,
     /// level_spread_dex per emitter.
     pub emitter_spread_dex: Vec<f64>,
+    /// Per emitter: the chance that this kind of source excites it at all; the largest is `shows`.
+    pub emitter_shows: Vec<f64>,
     /// Features of all emitters.
     pub features: Vec<CandidateFeature>,
 }

@@ -255,21 +255,21 @@ fn latent_states<'q>(amount: &'q Quadrature, shift: &'q Quadrature) -> impl Iter
         .flat_map(move |a| shift.nodes().iter().map(move |b| a + b))
 }
 
-/// One shift per emitter; a substance with a single visible emitter needs none.
+/// One shift per emitter. An emitter that this kind of source excites less surely than the
+/// substance's surest one may also be silent: a node far down, so that a salt without chloride is
+/// not held against its chloride bands. A single emitter needs no shift against itself.
 fn emitter_shifts(candidate: &Candidate, lines: &[Line]) -> Vec<Quadrature> {
     let visible = |e: usize| lines.iter().any(|l| l.emitter == e);
     let count = candidate.emitter_spread_dex.len();
     let single = (0..count).filter(|e| visible(*e)).count() < 2;
-    candidate
-        .emitter_spread_dex
-        .iter()
-        .enumerate()
-        .map(|(e, spread)| {
-            if single || !visible(e) {
-                Quadrature::fixed(0.0)
-            } else {
-                Quadrature::normal3(*spread)
+    (0..count)
+        .map(|e| {
+            if !visible(e) {
+                return Quadrature::fixed(0.0);
             }
+            let spread = if single { 0.0 } else { candidate.emitter_spread_dex[e] };
+            let lit = (candidate.emitter_shows[e] / candidate.shows).clamp(0.0, 1.0);
+            Quadrature::normal3(spread).or_far_down(1.0 - lit)
         })
         .collect()
 }

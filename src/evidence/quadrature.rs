@@ -45,6 +45,20 @@ impl Quadrature {
         Self::weighted(vec![-reach, 0.0, reach], vec![1.0, 4.0, 1.0])
     }
 
+    /// With probability `chance` the nuisance lies so far down that nothing shows: a first node
+    /// at −12 decades.
+    pub fn or_far_down(self, chance: f64) -> Self {
+        const FAR_DOWN_DEX: f64 = -12.0;
+        if chance < 1e-3 {
+            return self;
+        }
+        let mut nodes = vec![FAR_DOWN_DEX];
+        nodes.extend(self.nodes.iter());
+        let mut weights = vec![chance];
+        weights.extend(self.weights.iter().map(|w| w * (1.0 - chance)));
+        Self::weighted(nodes, weights)
+    }
+
     /// The shift common to all readings: uniform nodes over ±`reach` standard deviations, weights
     /// from 0.95 N(0, sd²) + 0.05 N(0, (5 sd)²), at least 13 nodes, spaced at most `spacing` (nm),
     /// at most 2001; one node if `sd` is zero.

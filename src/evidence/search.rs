@@ -6,7 +6,7 @@
 //! the more substances compete for the readings, the less another one adds.
 
 use super::assembly::{Latent, Stock};
-use super::composition::{Weighed, ln_total, middle, weigh};
+use super::composition::{Weighed, ln_total, middle, weigh, weigh_added};
 use super::density::ln_sum_exp;
 use super::matching::LANES;
 use rayon::prelude::*;
@@ -28,6 +28,8 @@ const CHAIN_MARGIN: f64 = 0.25;
 const CHAIN_MARGIN_MOST: f64 = 1.0;
 /// Shift nodes further than this below the best do not bound gains.
 const RELEVANT_LN: f64 = -8.0;
+/// Compositions estimated to lie this far below the best, in nats, keep the estimate.
+const ROUGH_LN: f64 = -9.0;
 /// Compositions evaluated per round, whatever the number of threads.
 const BATCH: usize = 4;
 
@@ -80,6 +82,9 @@ impl Search<'_, '_> {
         let settings = self.stock.scene.settings;
         let mut bound = f64::INFINITY;
         while self.nodes.len() < settings.search_limit {
+            if self.refine() {
+                continue;
+            }
             let open = self.open_children();
             bound = self.bound(&open);
             if bound < settings.search_tolerance {
@@ -87,6 +92,7 @@ impl Search<'_, '_> {
             }
             self.evaluate(&open);
         }
+        while self.refine() {}
         if self.nodes.len() >= settings.search_limit {
             bound = self.bound(&self.open_children());
         }
@@ -122,34 +128,68 @@ impl Search<'_, '_> {
         (ln_sum_exp(&left) - ln_sum_exp(&have)).exp()
     }
 
+    /// Estimates the best open children; a node that was only estimated is weighed first.
     fn evaluate(&mut self, open: &[(f64, usize, usize)]) {
-        let chosen: Vec<(Vec<usize>, Vec<f64>, Vec<usize>, Vec<Latent>)> = open
-            .iter()
-            .take(BATCH)
-            .map(|(_, n, t)| {
-                let node = &self.nodes[*n];
-                let mut places = node.places.clone();
-                places.push(*t);
-                let (members, start) = self.start(&node.weighed, self.order[*t].1);
-                (places, node.gain.clone(), members, start)
-            })
-            .collect();
-        let weighed: Vec<Weighed> = chosen
-            .par_iter()
-            .map(|(places, _, members, start)| {
-                if places.len() == 1 {
-                    self.singles[members[0]].clone()
-                } else {
-                    weigh(self.stock, members, start, true)
-                }
-            })
-            .collect();
-        for (_, n, t) in open.iter().take(BATCH) {
-            self.nodes[*n].done[*t] = true;
+        let batch: Vec<(usize, usize)> = open.iter().take(BATCH).map(|(_, n, t)| (*n, *t)).collect();
+        let rough: Vec<usize> = batch.iter().map(|(n, _)| *n).filter(|n| self.nodes[*n].weighed.rough).collect();
+        if !rough.is_empty() {
+            self.weigh_fully(rough);
+            return;
         }
-        for ((places, gain, _, _), weighed) in chosen.into_iter().zip(weighed) {
+        let weighed: Vec<Weighed> = batch
+            .par_iter()
+            .map(|(n, t)| {
+                let base = &self.nodes[*n].weighed;
+                let newcomer = self.order[*t].1;
+                if base.members.is_empty() {
+                    return self.singles[newcomer].clone();
+                }
+                let (members, start) = self.start(base, newcomer);
+                let newest = members.binary_search(&newcomer).unwrap_or(0);
+                weigh_added(self.stock, base, &members, &start, newest)
+            })
+            .collect();
+        for ((n, t), weighed) in batch.into_iter().zip(weighed) {
+            self.nodes[n].done[t] = true;
+            let mut places = self.nodes[n].places.clone();
+            places.push(t);
+            let gain = self.nodes[n].gain.clone();
             self.insert(places, weighed, gain);
         }
+    }
+
+    /// Weighs estimated compositions that matter, best first; says whether there were any.
+    fn refine(&mut self) -> bool {
+        let best = self.nodes.iter().map(|n| n.ln_weight).fold(f64::NEG_INFINITY, f64::max);
+        let mut rough: Vec<usize> = (0..self.nodes.len())
+            .filter(|n| self.nodes[*n].weighed.rough && self.nodes[*n].ln_weight > best + ROUGH_LN)
+            .collect();
+        rough.sort_by(|a, b| self.nodes[*b].ln_weight.total_cmp(&self.nodes[*a].ln_weight).then(a.cmp(b)));
+        rough.truncate(BATCH);
+        let any = !rough.is_empty();
+        self.weigh_fully(rough);
+        any
+    }
+
+    fn weigh_fully(&mut self, mut which: Vec<usize>) {
+        which.sort_unstable();
+        which.dedup();
+        let weighed: Vec<Weighed> = which
+            .par_iter()
+            .map(|n| {
+                let rough = &self.nodes[*n].weighed;
+                weigh(self.stock, &rough.members, &rough.mode, true)
+            })
+            .collect();
+        for (n, weighed) in which.into_iter().zip(weighed) {
+            self.nodes[n].ln_weight = self.ln_weight(&self.nodes[n].places, &weighed);
+            self.nodes[n].weighed = weighed;
+            self.learn(n);
+        }
+    }
+
+    fn ln_weight(&self, places: &[usize], weighed: &Weighed) -> f64 {
+        weighed.ln_evidence + places.iter().map(|p| self.ln_odds[self.order[*p].1]).sum::<f64>()
     }
 
     /// Members in ascending order with the states to begin from: the parent's mode and the
@@ -163,7 +203,7 @@ impl Search<'_, '_> {
     }
 
     fn insert(&mut self, places: Vec<usize>, weighed: Weighed, mut gain: Vec<f64>) {
-        let ln_weight = weighed.ln_evidence + places.iter().map(|p| self.ln_odds[self.order[*p].1]).sum::<f64>();
+        let ln_weight = self.ln_weight(&places, &weighed);
         // What is known of any evaluated part of this composition holds here too.
         for node in &self.nodes {
             if subset(&node.places, &places) {

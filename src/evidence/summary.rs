@@ -78,8 +78,8 @@ fn infer_once(
             (chance / (1.0 - chance)).ln()
         })
         .collect();
-    let found = search(&stock, &ln_odds);
-    summarise(&stock, candidates, &found)
+    let t=std::time::Instant::now();let found = search(&stock, &ln_odds);eprintln!("search {:?} nodes {} weigh {} calls {} miss {} cols {} fin {} segs {}",t.elapsed(),found.ranked.len(),super::composition::WEIGH.load(std::sync::atomic::Ordering::Relaxed),super::composition::CALLS.load(std::sync::atomic::Ordering::Relaxed),super::composition::MISS.load(std::sync::atomic::Ordering::Relaxed),super::composition::COLS.load(std::sync::atomic::Ordering::Relaxed),super::composition::FIN.load(std::sync::atomic::Ordering::Relaxed),Assembly::new(&stock,&found.ranked[0].0.members).segments.len());
+    let t=std::time::Instant::now();let r=summarise(&stock, candidates, &found);eprintln!("summary {:?}",t.elapsed());r
 }
 
 fn summarise(stock: &Stock, candidates: &[Candidate], found: &Found) -> Inference {

@@ -138,6 +138,7 @@ fn candidate(
         prior,
         shows: 0.0,
         emitter_spread_dex: Vec::new(),
+        emitter_shows: Vec::new(),
         features: Vec::new(),
     };
     let mut origins = Vec::new();
@@ -162,6 +163,7 @@ fn candidate(
         candidate
             .emitter_spread_dex
             .push(excitation.level_spread_dex);
+        candidate.emitter_shows.push(excitation.shows);
     }
     (candidate, origins)
 }
