@@ -5,12 +5,12 @@
 //! A module knows the ones before it, never those after.
 #![forbid(unsafe_code)]
 
+pub mod cli;
+pub mod evidence;
 pub mod library;
 pub mod reading;
 pub mod reduction;
-pub mod setup;
-pub mod evidence;
-pub mod verdict;
 pub mod report;
+pub mod setup;
 pub mod store;
-pub mod cli;
+pub mod verdict;

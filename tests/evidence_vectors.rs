@@ -2,8 +2,8 @@
 //! file; add one to add a case.
 
 use linstock::evidence::{
-    Candidate, CandidateFeature, Conditions, FeatureForm, MixtureRule, Observation, PresenceRule, Quadrature, Settings,
-    exhaustive,
+    Candidate, CandidateFeature, Conditions, FeatureForm, MixtureRule, Observation, PresenceRule,
+    Quadrature, Settings, exhaustive,
 };
 use serde::Deserialize;
 use std::collections::BTreeMap;
@@ -55,7 +55,10 @@ fn check_printed(what: &str, value: f64, printed: &str) {
     let decimals = printed.split('.').nth(1).map_or(0, str::len);
     let expected: f64 = printed.parse().expect("a printed number");
     let half_unit = 0.5 * 10f64.powi(-(decimals as i32)) * 1.000_001;
-    assert!((value - expected).abs() <= half_unit, "{what}: {value} is not {printed}");
+    assert!(
+        (value - expected).abs() <= half_unit,
+        "{what}: {value} is not {printed}"
+    );
 }
 
 fn settings(case: &Case) -> Settings {
@@ -125,40 +128,66 @@ fn check(path: &Path) {
             features: c
                 .features
                 .iter()
-                .map(|[wavelength_nm, uncertainty_nm, level_dex, scatter_dex]| CandidateFeature {
-                    emitter: 0,
-                    form: FeatureForm::Line,
-                    wavelength_nm: *wavelength_nm,
-                    uncertainty_nm: *uncertainty_nm,
-                    level_dex: *level_dex,
-                    scatter_dex: *scatter_dex,
-                })
+                .map(
+                    |[wavelength_nm, uncertainty_nm, level_dex, scatter_dex]| CandidateFeature {
+                        emitter: 0,
+                        form: FeatureForm::Line,
+                        wavelength_nm: *wavelength_nm,
+                        uncertainty_nm: *uncertainty_nm,
+                        level_dex: *level_dex,
+                        scatter_dex: *scatter_dex,
+                    },
+                )
                 .collect(),
         })
         .collect();
-    let result = exhaustive(&observations, &conditions, &candidates, &settings(&case)).expect("few candidates");
-    let name = path.file_stem().unwrap_or_default().to_string_lossy().into_owned();
+    let result = exhaustive(&observations, &conditions, &candidates, &settings(&case))
+        .expect("few candidates");
+    let name = path
+        .file_stem()
+        .unwrap_or_default()
+        .to_string_lossy()
+        .into_owned();
     for (c, z) in case.candidate.iter().zip(&result.detectability) {
-        check_printed(&format!("{name}: Z of {}", c.name), *z, &case.expected.detectability[&c.name]);
+        check_printed(
+            &format!("{name}: Z of {}", c.name),
+            *z,
+            &case.expected.detectability[&c.name],
+        );
     }
     let label = |members: &[usize]| match members {
         [] => "none".to_owned(),
-        some => some.iter().map(|m| case.candidate[*m].name.as_str()).collect::<Vec<_>>().join("+"),
+        some => some
+            .iter()
+            .map(|m| case.candidate[*m].name.as_str())
+            .collect::<Vec<_>>()
+            .join("+"),
     };
     let mut compared = 0;
     for entry in &result.entries {
         let key = label(&entry.members);
         if let Some(printed) = case.expected.ln_evidence_any.get(&key) {
-            check_printed(&format!("{name}: ln E' of {key}"), entry.ln_evidence_any, printed);
+            check_printed(
+                &format!("{name}: ln E' of {key}"),
+                entry.ln_evidence_any,
+                printed,
+            );
             compared += 1;
         }
         if let Some(printed) = case.expected.posterior.get(&key) {
-            check_printed(&format!("{name}: posterior of {key}"), entry.posterior, printed);
+            check_printed(
+                &format!("{name}: posterior of {key}"),
+                entry.posterior,
+                printed,
+            );
             compared += 1;
         }
     }
     let stated = case.expected.ln_evidence_any.len() + case.expected.posterior.len();
-    assert_eq!(compared, stated, "{name}: an expected value names no composition");
+    assert_eq!(
+        compared, stated,
+        "{name}: an expected value names no composition"
+    );
 }
 
 #[test]

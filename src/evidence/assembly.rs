@@ -23,15 +23,32 @@ impl<'a> Stock<'a> {
     pub fn new(scene: Scene<'a>, prepared: Vec<Prepared>) -> Self {
         let reference = scene.settings.clutter_reference;
         let count = scene.observations.len() as f64;
-        let first = scene.settings.clutter.nodes().first().copied().unwrap_or(reference);
+        let first = scene
+            .settings
+            .clutter
+            .nodes()
+            .first()
+            .copied()
+            .unwrap_or(reference);
         let mut lane_scale = [reference / first; LANES];
         let mut lane_ln_weight = [f64::NEG_INFINITY; LANES];
         let clutter = &scene.settings.clutter;
-        for (l, (rate, weight)) in clutter.nodes().iter().zip(clutter.weights()).take(LANES).enumerate() {
+        for (l, (rate, weight)) in clutter
+            .nodes()
+            .iter()
+            .zip(clutter.weights())
+            .take(LANES)
+            .enumerate()
+        {
             lane_scale[l] = reference / rate;
             lane_ln_weight[l] = weight.ln() + count * (rate / reference).ln() - (rate - reference);
         }
-        Self { scene, prepared, lane_scale, lane_ln_weight }
+        Self {
+            scene,
+            prepared,
+            lane_scale,
+            lane_ln_weight,
+        }
     }
 }
 
@@ -148,7 +165,12 @@ impl Assembly {
             }
         }
         let segments = segments(stock, members, blocks);
-        Self { members: members.to_vec(), segments, own_missing, chains }
+        Self {
+            members: members.to_vec(),
+            segments,
+            own_missing,
+            chains,
+        }
     }
 
     /// ln Π (1−p) of the lines of one member outside chains.
@@ -166,7 +188,8 @@ impl Assembly {
         segment.emitters.iter().fold(0, |key, (member, emitter)| {
             let prepared = &stock.prepared[self.members[*member]];
             let states = prepared.ln_missing_emitter[*emitter].len() as u64;
-            key.wrapping_mul(states).wrapping_add(latents[*member].state(prepared, *emitter) as u64)
+            key.wrapping_mul(states)
+                .wrapping_add(latents[*member].state(prepared, *emitter) as u64)
         })
     }
 
@@ -175,7 +198,10 @@ impl Assembly {
     ///
     /// `barred` lists the members that are barred in turn: set b bars `barred[i]` where bit i of b
     /// is set. `without` is a reading (global index) that may match nothing.
-    #[expect(clippy::too_many_arguments, reason = "the inner call of every integral")]
+    #[expect(
+        clippy::too_many_arguments,
+        reason = "the inner call of every integral"
+    )]
     pub fn ln_segment(
         &self,
         stock: &Stock,
@@ -191,14 +217,26 @@ impl Assembly {
         out.clear();
         let skip = without.and_then(|j| segment.readings.iter().position(|r| *r == j));
         for bars in 0..1usize << barred.len() {
-            let is_barred = |member: usize| barred.iter().position(|b| *b == member).is_some_and(|i| bars >> i & 1 == 1);
+            let is_barred = |member: usize| {
+                barred
+                    .iter()
+                    .position(|b| *b == member)
+                    .is_some_and(|i| bars >> i & 1 == 1)
+            };
             sums(stock, segment, work, &is_barred, skip, out);
         }
         ln_missing
     }
 
     /// Computes the lines of a segment as they look in one latent state, and all r.
-    fn realise(&self, stock: &Stock, segment: &Segment, latents: &[Latent], shifts: &[usize], work: &mut Workspace) -> f64 {
+    fn realise(
+        &self,
+        stock: &Stock,
+        segment: &Segment,
+        latents: &[Latent],
+        shifts: &[usize],
+        work: &mut Workspace,
+    ) -> f64 {
         work.shifts = shifts.len();
         work.lines.clear();
         work.reading.clear();
@@ -209,12 +247,37 @@ impl Assembly {
         let mut ln_missing = 0.0;
         for block in &segment.blocks {
             match block {
-                Block::Single { member, line, pairs } => {
-                    self.realise_single(stock, (*member, *line), pairs, latents, shifts, work, &mut columns);
+                Block::Single {
+                    member,
+                    line,
+                    pairs,
+                } => {
+                    self.realise_single(
+                        stock,
+                        (*member, *line),
+                        pairs,
+                        latents,
+                        shifts,
+                        work,
+                        &mut columns,
+                    );
                 }
-                Block::Chain { parts, reach, width_nm } => {
-                    ln_missing +=
-                        self.realise_chain(stock, segment, parts, reach, *width_nm, latents, shifts, work, &mut columns);
+                Block::Chain {
+                    parts,
+                    reach,
+                    width_nm,
+                } => {
+                    ln_missing += self.realise_chain(
+                        stock,
+                        segment,
+                        parts,
+                        reach,
+                        *width_nm,
+                        latents,
+                        shifts,
+                        work,
+                        &mut columns,
+                    );
                 }
             }
         }
@@ -293,12 +356,19 @@ impl Assembly {
             let start = work.reading.len();
             for local in reach {
                 let reading = segment.readings[*local];
-                let amplitude = scene.amplitude(reading, whole.level_dex, whole.scatter_dex, 1.0 - detection);
+                let amplitude =
+                    scene.amplitude(reading, whole.level_dex, whole.scatter_dex, 1.0 - detection);
                 work.reading.push(*local);
                 columns.extend(shifts.iter().map(|d| {
                     let shift = scene.offset.nodes()[*d];
                     amplitude
-                        * scene.position(reading, whole.wavelength_nm, whole.uncertainty_nm, whole.band_chance, shift)
+                        * scene.position(
+                            reading,
+                            whole.wavelength_nm,
+                            whole.uncertainty_nm,
+                            whole.band_chance,
+                            shift,
+                        )
                 }));
             }
             work.lines.push(Realised {
@@ -315,7 +385,14 @@ impl Assembly {
 
     /// For every line of a segment at one shift: the line, and (reading, probability) of having
     /// caused it, in the given lane.
-    pub fn causes(&self, stock: &Stock, segment: &Segment, latents: &[Latent], shift: usize, lane: usize) -> Vec<(Realised, Vec<(usize, f64)>)> {
+    pub fn causes(
+        &self,
+        stock: &Stock,
+        segment: &Segment,
+        latents: &[Latent],
+        shift: usize,
+        lane: usize,
+    ) -> Vec<(Realised, Vec<(usize, f64)>)> {
         let mut work = Workspace::default();
         self.realise(stock, segment, latents, &[shift], &mut work);
         let mut out = Vec::new();
@@ -337,7 +414,14 @@ impl Assembly {
                             work.r[other] = 0.0;
                         }
                         out.clear();
-                        sums(stock, segment, &mut work, &|_| false, Some(readings[q]), &mut out);
+                        sums(
+                            stock,
+                            segment,
+                            &mut work,
+                            &|_| false,
+                            Some(readings[q]),
+                            &mut out,
+                        );
                         let rest = out[0][lane];
                         work.r.copy_from_slice(&r);
                         let ln = (r[q] * stock.lane_scale[lane]).ln() + rest - whole;
@@ -365,7 +449,15 @@ fn sums(
         return;
     }
     work.find_live(stock.scene.settings.gate, is_barred, skip);
-    let Workspace { matching, live, reading, r, shifts, flat, .. } = work;
+    let Workspace {
+        matching,
+        live,
+        reading,
+        r,
+        shifts,
+        flat,
+        ..
+    } = work;
     let row = |q: usize| &r[q * *shifts..][..*shifts];
     if segment.readings.len() == 1 || live.len() == 1 {
         flat.clear();
@@ -375,7 +467,10 @@ fn sums(
                 *sum += r;
             }
         }
-        out.extend(flat.iter().map(|sum| stock.lane_scale.map(|scale| (sum * scale).ln_1p())));
+        out.extend(
+            flat.iter()
+                .map(|sum| stock.lane_scale.map(|scale| (sum * scale).ln_1p())),
+        );
         return;
     }
     matching.clear(*shifts * LANES);
@@ -393,7 +488,10 @@ fn sums(
     }
     flat.clear();
     matching.ln_sums(flat);
-    out.extend(flat.chunks_exact(LANES).map(|c| std::array::from_fn(|l| c[l])));
+    out.extend(
+        flat.chunks_exact(LANES)
+            .map(|c| std::array::from_fn(|l| c[l])),
+    );
 }
 
 impl Workspace {
@@ -404,7 +502,15 @@ impl Workspace {
     fn find_live(&mut self, gate: f64, is_barred: &dyn Fn(usize) -> bool, skip: Option<usize>) {
         const PASSES: usize = 2;
         let gate = 0.1 * gate;
-        let Self { lines, reading, r, shifts, live, rivals, .. } = self;
+        let Self {
+            lines,
+            reading,
+            r,
+            shifts,
+            live,
+            rivals,
+            ..
+        } = self;
         let row = |q: usize| &r[q * *shifts..][..*shifts];
         live.clear();
         // A blend is caused by the member that holds most of it.
@@ -431,7 +537,10 @@ impl Workspace {
             for pairs in live.iter_mut().filter(|pairs| pairs.len() > 1) {
                 pairs.retain(|q| {
                     let rivals = &rivals[reading[*q] * *shifts..][..*shifts];
-                    row(*q).iter().zip(rivals).any(|(r, rival)| *r > gate * (1.0 + rival))
+                    row(*q)
+                        .iter()
+                        .zip(rivals)
+                        .any(|(r, rival)| *r > gate * (1.0 + rival))
                 });
             }
             live.retain(|pairs| !pairs.is_empty());
@@ -442,7 +551,12 @@ impl Workspace {
 /// The member that holds the largest share of a blend, with its strongest line there.
 fn owner(parts: &[(usize, usize)], group: &[usize], weights: &[f64]) -> (usize, usize, f64) {
     let share = |member: usize| -> f64 {
-        group.iter().zip(weights).filter(|(i, _)| parts[**i].0 == member).map(|(_, w)| w).sum()
+        group
+            .iter()
+            .zip(weights)
+            .filter(|(i, _)| parts[**i].0 == member)
+            .map(|(_, w)| w)
+            .sum()
     };
     // Groups list the strongest first, so that ties go to it.
     let mut best = (0, 0, f64::NEG_INFINITY);
@@ -464,7 +578,10 @@ fn blocks(stock: &Stock, members: &[usize]) -> Vec<Block> {
         .enumerate()
         .flat_map(|(m, candidate)| {
             let lines = &stock.prepared[*candidate].lines;
-            lines.iter().enumerate().map(move |(i, line)| (line.wavelength_nm, m, i))
+            lines
+                .iter()
+                .enumerate()
+                .map(move |(i, line)| (line.wavelength_nm, m, i))
         })
         .collect();
     all.sort_by(|a, b| a.0.total_cmp(&b.0).then(a.1.cmp(&b.1)));
@@ -473,7 +590,9 @@ fn blocks(stock: &Stock, members: &[usize]) -> Vec<Block> {
     while start < all.len() {
         let mut end = start + 1;
         let width = |x: f64| stock.scene.merge_width(x);
-        while end < all.len() && all[end].0 - all[end - 1].0 < width(0.5 * (all[end].0 + all[end - 1].0)) {
+        while end < all.len()
+            && all[end].0 - all[end - 1].0 < width(0.5 * (all[end].0 + all[end - 1].0))
+        {
             end += 1;
         }
         let chain = &all[start..end];
@@ -489,7 +608,11 @@ fn blocks(stock: &Stock, members: &[usize]) -> Vec<Block> {
                     .map(|(pair, reading)| (pair, reading))
                     .collect();
                 if !pairs.is_empty() {
-                    blocks.push(Block::Single { member: *member, line: *line, pairs });
+                    blocks.push(Block::Single {
+                        member: *member,
+                        line: *line,
+                        pairs,
+                    });
                 }
             }
         }
@@ -499,7 +622,12 @@ fn blocks(stock: &Stock, members: &[usize]) -> Vec<Block> {
 }
 
 /// (pair, global reading) of one line; pairs are sorted by line.
-fn pairs_of<'s>(stock: &'s Stock, members: &[usize], member: usize, line: usize) -> impl Iterator<Item = (usize, usize)> + 's {
+fn pairs_of<'s>(
+    stock: &'s Stock,
+    members: &[usize],
+    member: usize,
+    line: usize,
+) -> impl Iterator<Item = (usize, usize)> + 's {
     let pairs = &stock.prepared[members[member]].pairs;
     let first = pairs.partition_point(|p| p.line < line);
     pairs[first..]
@@ -517,7 +645,9 @@ fn segments(stock: &Stock, members: &[usize], blocks: Vec<Block>) -> Vec<Segment
             Block::Chain { parts, .. } => {
                 let mut all: Vec<usize> = parts
                     .iter()
-                    .flat_map(|(m, line)| pairs_of(stock, members, *m, *line).map(|(_, reading)| reading))
+                    .flat_map(|(m, line)| {
+                        pairs_of(stock, members, *m, *line).map(|(_, reading)| reading)
+                    })
                     .collect();
                 all.sort_unstable();
                 all.dedup();
@@ -536,7 +666,10 @@ fn segments(stock: &Stock, members: &[usize], blocks: Vec<Block>) -> Vec<Segment
         });
         parts[at].push((block, reach));
     }
-    parts.into_iter().map(|p| segment(stock, members, p)).collect()
+    parts
+        .into_iter()
+        .map(|p| segment(stock, members, p))
+        .collect()
 }
 
 /// A key per block; blocks with the same key belong together. Blocks without readings stand alone.
@@ -555,11 +688,16 @@ fn group_by_readings(reaches: &[Vec<usize>], readings: usize) -> Vec<usize> {
             root[p.max(q)] = p.min(q);
         }
     }
-    (0..reaches.len()).map(|b| find(&mut root, readings + b)).collect()
+    (0..reaches.len())
+        .map(|b| find(&mut root, readings + b))
+        .collect()
 }
 
 fn segment(stock: &Stock, members: &[usize], parts: Vec<(Block, Vec<usize>)>) -> Segment {
-    let mut readings: Vec<usize> = parts.iter().flat_map(|(_, reach)| reach.iter().copied()).collect();
+    let mut readings: Vec<usize> = parts
+        .iter()
+        .flat_map(|(_, reach)| reach.iter().copied())
+        .collect();
     readings.sort_unstable();
     readings.dedup();
     let local = |global: usize| readings.binary_search(&global).unwrap_or(0);
@@ -568,14 +706,31 @@ fn segment(stock: &Stock, members: &[usize], parts: Vec<(Block, Vec<usize>)>) ->
     for (block, reach) in parts {
         let emitter = |m: usize, line: usize| stock.prepared[members[m]].lines[line].emitter;
         blocks.push(match block {
-            Block::Single { member, line, pairs } => {
+            Block::Single {
+                member,
+                line,
+                pairs,
+            } => {
                 owners.push((member, emitter(member, line)));
-                let pairs = pairs.into_iter().map(|(pair, j)| (pair, local(j))).collect();
-                Block::Single { member, line, pairs }
+                let pairs = pairs
+                    .into_iter()
+                    .map(|(pair, j)| (pair, local(j)))
+                    .collect();
+                Block::Single {
+                    member,
+                    line,
+                    pairs,
+                }
             }
-            Block::Chain { parts, width_nm, .. } => {
+            Block::Chain {
+                parts, width_nm, ..
+            } => {
                 owners.extend(parts.iter().map(|(m, line)| (*m, emitter(*m, *line))));
-                Block::Chain { parts, reach: reach.into_iter().map(local).collect(), width_nm }
+                Block::Chain {
+                    parts,
+                    reach: reach.into_iter().map(local).collect(),
+                    width_nm,
+                }
             }
         });
     }
@@ -583,5 +738,10 @@ fn segment(stock: &Stock, members: &[usize], parts: Vec<(Block, Vec<usize>)>) ->
     owners.dedup();
     let mut present: Vec<usize> = owners.iter().map(|(m, _)| *m).collect();
     present.dedup();
-    Segment { blocks, readings, members: present, emitters: owners }
+    Segment {
+        blocks,
+        readings,
+        members: present,
+        emitters: owners,
+    }
 }

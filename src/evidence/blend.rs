@@ -22,18 +22,35 @@ pub struct Part {
 /// h_b = log10 Σ 10^h, λ_b = Σ φ λ, τ_b² = Σ φ² τ²,
 /// u_b² = Σ φ² u² + Σ φ² (λ − λ_b)² min(τ ln 10, 1)².
 pub fn blend(parts: &[Part]) -> (Part, Vec<f64>) {
-    let peak = parts.iter().map(|p| p.level_dex).fold(f64::NEG_INFINITY, f64::max);
-    let raw: Vec<f64> = parts.iter().map(|p| 10f64.powf(p.level_dex - peak)).collect();
+    let peak = parts
+        .iter()
+        .map(|p| p.level_dex)
+        .fold(f64::NEG_INFINITY, f64::max);
+    let raw: Vec<f64> = parts
+        .iter()
+        .map(|p| 10f64.powf(p.level_dex - peak))
+        .collect();
     let total: f64 = raw.iter().sum();
     let weights: Vec<f64> = raw.iter().map(|r| r / total).collect();
-    let mean = |value: fn(&Part) -> f64| -> f64 { weights.iter().zip(parts).map(|(w, p)| w * value(p)).sum() };
+    let mean = |value: fn(&Part) -> f64| -> f64 {
+        weights.iter().zip(parts).map(|(w, p)| w * value(p)).sum()
+    };
     let wavelength_nm = mean(|p| p.wavelength_nm);
     let spread = |p: &Part| {
-        let moved = (p.wavelength_nm - wavelength_nm) * (p.scatter_dex * std::f64::consts::LN_10).min(1.0);
+        let moved =
+            (p.wavelength_nm - wavelength_nm) * (p.scatter_dex * std::f64::consts::LN_10).min(1.0);
         p.uncertainty_nm.powi(2) + moved.powi(2)
     };
-    let variance: f64 = weights.iter().zip(parts).map(|(w, p)| w * w * spread(p)).sum();
-    let scatter: f64 = weights.iter().zip(parts).map(|(w, p)| (w * p.scatter_dex).powi(2)).sum();
+    let variance: f64 = weights
+        .iter()
+        .zip(parts)
+        .map(|(w, p)| w * w * spread(p))
+        .sum();
+    let scatter: f64 = weights
+        .iter()
+        .zip(parts)
+        .map(|(w, p)| (w * p.scatter_dex).powi(2))
+        .sum();
     let whole = Part {
         wavelength_nm,
         uncertainty_nm: variance.sqrt(),
@@ -49,7 +66,12 @@ pub fn blend(parts: &[Part]) -> (Part, Vec<f64>) {
 /// then the strongest of those left, and so on. Gives the indices of each group, seed first.
 pub fn absorb(parts: &[Part], width_nm: f64) -> Vec<Vec<usize>> {
     let mut order: Vec<usize> = (0..parts.len()).collect();
-    order.sort_by(|a, b| parts[*b].level_dex.total_cmp(&parts[*a].level_dex).then(a.cmp(b)));
+    order.sort_by(|a, b| {
+        parts[*b]
+            .level_dex
+            .total_cmp(&parts[*a].level_dex)
+            .then(a.cmp(b))
+    });
     let mut groups: Vec<Vec<usize>> = Vec::new();
     let mut left = order;
     while let Some(seed) = left.first().copied() {
@@ -68,7 +90,14 @@ mod tests {
     use super::*;
 
     fn part(wavelength_nm: f64, level_dex: f64) -> Part {
-        Part { wavelength_nm, uncertainty_nm: 0.005, level_dex, scatter_dex: 0.3, edge: 1.0, band_chance: 0.05 }
+        Part {
+            wavelength_nm,
+            uncertainty_nm: 0.005,
+            level_dex,
+            scatter_dex: 0.3,
+            edge: 1.0,
+            band_chance: 0.05,
+        }
     }
 
     #[test]
@@ -88,7 +117,12 @@ mod tests {
 
     #[test]
     fn the_strongest_absorbs_first() {
-        let chain = [part(500.0, -1.0), part(500.8, 0.0), part(501.6, -0.5), part(502.3, -0.2)];
+        let chain = [
+            part(500.0, -1.0),
+            part(500.8, 0.0),
+            part(501.6, -0.5),
+            part(502.3, -0.2),
+        ];
         assert_eq!(absorb(&chain, 1.0), vec![vec![1, 2, 0], vec![3]]);
     }
 }

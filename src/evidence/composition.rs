@@ -7,8 +7,6 @@ use super::matching::{LANES, Lanes};
 use super::settings::MixtureRule;
 use std::collections::HashMap;
 use std::rc::Rc;
-use std::sync::atomic::{AtomicUsize,Ordering};
-pub static CALLS:AtomicUsize=AtomicUsize::new(0);pub static MISS:AtomicUsize=AtomicUsize::new(0);pub static WEIGH:AtomicUsize=AtomicUsize::new(0);pub static COLS:AtomicUsize=AtomicUsize::new(0);pub static FIN:AtomicUsize=AtomicUsize::new(0);
 
 /// A composition with its evidence.
 #[derive(Debug, Clone)]
@@ -81,7 +79,7 @@ pub fn weigh(stock: &Stock, members: &[usize], start: &[Latent], barring: bool) 
             rough: false,
         };
     }
-    WEIGH.fetch_add(1,Ordering::Relaxed);let assembly = Assembly::new(stock, members);
+    let assembly = Assembly::new(stock, members);
     let mut profile = Profile::new(stock, &assembly, start.to_vec(), barring);
     let nodes = match stock.scene.settings.mixture {
         MixtureRule::Product => {
@@ -109,10 +107,18 @@ pub fn weigh(stock: &Stock, members: &[usize], start: &[Latent], barring: bool) 
 /// estimate of E*(S ∪ x) = E*(S) · Σ_α w/Z (L(S ∪ x) − L(S ∪ x; x barred))/L(S) at the mode of S.
 ///
 /// `members` and `start` are of the whole composition, `newest` the place of the added one.
-pub fn weigh_added(stock: &Stock, base: &Weighed, members: &[usize], start: &[Latent], newest: usize) -> Weighed {
+pub fn weigh_added(
+    stock: &Stock,
+    base: &Weighed,
+    members: &[usize],
+    start: &[Latent],
+    newest: usize,
+) -> Weighed {
     let assembly = Assembly::new(stock, members);
     let mut profile = Profile::new(stock, &assembly, start.to_vec(), false);
-    profile.shifts = (0..base.nodes.len()).filter(|d| base.mode_ln[*d][0].is_finite()).collect();
+    profile.shifts = (0..base.nodes.len())
+        .filter(|d| base.mode_ln[*d][0].is_finite())
+        .collect();
     profile.doubtful = vec![newest];
     profile.place_bars();
     profile.refresh();
@@ -139,7 +145,11 @@ pub fn weigh_added(stock: &Stock, base: &Weighed, members: &[usize], start: &[La
 pub fn middle(stock: &Stock, candidate: usize) -> Latent {
     Latent {
         amount: stock.scene.amount.len() / 2,
-        shifts: stock.prepared[candidate].shifts.iter().map(|q| q.len() / 2).collect(),
+        shifts: stock.prepared[candidate]
+            .shifts
+            .iter()
+            .map(|q| q.len() / 2)
+            .collect(),
     }
 }
 
@@ -193,7 +203,12 @@ struct Totals {
 
 impl<'s, 'a> Profile<'s, 'a> {
     /// Evaluates the starting state; decides which members have to be barred in turn.
-    pub fn new(stock: &'s Stock<'a>, assembly: &'s Assembly, latents: Vec<Latent>, barring: bool) -> Self {
+    pub fn new(
+        stock: &'s Stock<'a>,
+        assembly: &'s Assembly,
+        latents: Vec<Latent>,
+        barring: bool,
+    ) -> Self {
         let count = assembly.members.len();
         let by_member = (0..count)
             .map(|m| positions(&assembly.segments, |s| s.members.contains(&m)))
@@ -260,7 +275,14 @@ impl<'s, 'a> Profile<'s, 'a> {
             for m in &segment.members {
                 let mut out = Vec::new();
                 self.assembly.ln_segment(
-                    self.stock, segment, &self.latents, &self.shifts, &[*m], None, &mut self.work, &mut out,
+                    self.stock,
+                    segment,
+                    &self.latents,
+                    &self.shifts,
+                    &[*m],
+                    None,
+                    &mut self.work,
+                    &mut out,
                 );
                 let half = self.shifts.len();
                 for d in 0..half {
@@ -273,7 +295,16 @@ impl<'s, 'a> Profile<'s, 'a> {
         let mut worst: Vec<(f64, usize)> = ratio
             .iter()
             .enumerate()
-            .map(|(m, nodes)| (nodes.iter().flatten().copied().fold(f64::NEG_INFINITY, f64::max), m))
+            .map(|(m, nodes)| {
+                (
+                    nodes
+                        .iter()
+                        .flatten()
+                        .copied()
+                        .fold(f64::NEG_INFINITY, f64::max),
+                    m,
+                )
+            })
             .filter(|(ln, _)| *ln > CERTAIN.ln())
             .collect();
         worst.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1)));
@@ -284,18 +315,28 @@ impl<'s, 'a> Profile<'s, 'a> {
     }
 
     fn evaluate(&mut self, segment: usize, latents: &[Latent], without: Option<usize>) -> Value {
-        CALLS.fetch_add(1,Ordering::Relaxed);let part = &self.assembly.segments[segment];
+        let part = &self.assembly.segments[segment];
         let key = (segment, self.assembly.state_key(self.stock, part, latents));
         if without.is_none()
             && let Some(known) = self.memo.get(&key)
         {
             return Rc::clone(known);
         }
-        MISS.fetch_add(1,Ordering::Relaxed);COLS.fetch_add(self.shifts.len()<<self.local_bars[segment].len(),Ordering::Relaxed);let barred: Vec<usize> = self.local_bars[segment].iter().map(|i| self.doubtful[*i]).collect();
+        let barred: Vec<usize> = self.local_bars[segment]
+            .iter()
+            .map(|i| self.doubtful[*i])
+            .collect();
         let mut out = Vec::new();
-        let missing =
-            self.assembly
-                .ln_segment(self.stock, part, latents, &self.shifts, &barred, without, &mut self.work, &mut out);
+        let missing = self.assembly.ln_segment(
+            self.stock,
+            part,
+            latents,
+            &self.shifts,
+            &barred,
+            without,
+            &mut self.work,
+            &mut out,
+        );
         let value = Rc::new((out, missing));
         if without.is_none() {
             self.memo.insert(key, Rc::clone(&value));
@@ -316,7 +357,10 @@ impl<'s, 'a> Profile<'s, 'a> {
             .map(|s| self.evaluate(s, &latents, None))
             .collect();
         let sets = 1usize << self.doubtful.len();
-        let mut totals = Totals { ln: vec![[0.0; LANES]; sets * self.shifts.len()], missing: 0.0 };
+        let mut totals = Totals {
+            ln: vec![[0.0; LANES]; sets * self.shifts.len()],
+            missing: 0.0,
+        };
         for s in 0..self.values.len() {
             self.accumulate(&mut totals, s, &self.values[s], 1.0);
         }
@@ -341,7 +385,12 @@ impl<'s, 'a> Profile<'s, 'a> {
     }
 
     /// Totals with some segments replaced; `before` gives their present values.
-    fn with_replaced<'v>(&self, totals: &Totals, changed: &[Replaced], before: impl Fn(usize) -> &'v Value) -> Totals {
+    fn with_replaced<'v>(
+        &self,
+        totals: &Totals,
+        changed: &[Replaced],
+        before: impl Fn(usize) -> &'v Value,
+    ) -> Totals {
         let mut next = totals.clone();
         for (s, value) in changed {
             let old = before(*s);
@@ -363,7 +412,7 @@ impl<'s, 'a> Profile<'s, 'a> {
 
     /// ln L* = ln Σ_B (−1)^|B| L(B barred) by shift and lane.
     fn finish(&self, latents: &[Latent], totals: &Totals) -> Slice {
-        FIN.fetch_add(self.shifts.len()<<self.doubtful.len(),Ordering::Relaxed);let count = self.shifts.len();
+        let count = self.shifts.len();
         let missing = self.own_missing(latents) + totals.missing;
         let sets = 1usize << self.doubtful.len();
         (0..count)
@@ -387,7 +436,12 @@ impl<'s, 'a> Profile<'s, 'a> {
     fn ln_unbarred(&self) -> Vec<Lanes> {
         let missing = self.own_missing(&self.latents) + self.totals.missing;
         let count = self.shifts.len();
-        self.spread(self.totals.ln[..count].iter().map(|lanes| lanes.map(|x| x + missing)).collect())
+        self.spread(
+            self.totals.ln[..count]
+                .iter()
+                .map(|lanes| lanes.map(|x| x + missing))
+                .collect(),
+        )
     }
 
     fn present(&self) -> Slice {
@@ -401,7 +455,12 @@ impl<'s, 'a> Profile<'s, 'a> {
         self.finish(latents, &totals)
     }
 
-    fn replace(&mut self, latents: &[Latent], touched: &[usize], without: Option<usize>) -> Vec<Replaced> {
+    fn replace(
+        &mut self,
+        latents: &[Latent],
+        touched: &[usize],
+        without: Option<usize>,
+    ) -> Vec<Replaced> {
         touched
             .iter()
             .map(|s| (*s, self.evaluate(*s, latents, without)))
@@ -532,7 +591,12 @@ impl<'s, 'a> Profile<'s, 'a> {
         let changed = self.replace(&latents, &touched, None);
         let totals = self.with_replaced(&self.totals, &changed, |s| &self.values[s]);
         let slice = self.finish(&latents, &totals);
-        Point { latents, changed, totals, slice }
+        Point {
+            latents,
+            changed,
+            totals,
+            slice,
+        }
     }
 
     fn climb_shifts(&mut self, m: usize) -> bool {
@@ -541,14 +605,23 @@ impl<'s, 'a> Profile<'s, 'a> {
             let count = self.stock.prepared[self.assembly.members[m]].shifts[e].len();
             if count > 1 {
                 let touched = self.by_emitter[m][e].clone();
-                moved |= self.choose(m, &touched, (0..count).map(|b| move |l: &mut Latent| l.shifts[e] = b));
+                moved |= self.choose(
+                    m,
+                    &touched,
+                    (0..count).map(|b| move |l: &mut Latent| l.shifts[e] = b),
+                );
             }
         }
         moved
     }
 
     /// Moves one member to the best of several states; says whether it moved.
-    fn choose<F: Fn(&mut Latent)>(&mut self, m: usize, touched: &[usize], options: impl Iterator<Item = F>) -> bool {
+    fn choose<F: Fn(&mut Latent)>(
+        &mut self,
+        m: usize,
+        touched: &[usize],
+        options: impl Iterator<Item = F>,
+    ) -> bool {
         let mut best = (f64::NEG_INFINITY, self.latents.clone());
         for set in options {
             let mut latents = self.latents.clone();
@@ -575,7 +648,9 @@ impl<'s, 'a> Profile<'s, 'a> {
             .iter()
             .zip(&self.shifts)
             .map(|(lanes, d)| {
-                let terms: Vec<f64> = (0..LANES).map(|l| lanes[l] + self.stock.lane_ln_weight[l]).collect();
+                let terms: Vec<f64> = (0..LANES)
+                    .map(|l| lanes[l] + self.stock.lane_ln_weight[l])
+                    .collect();
                 ln_sum_exp(&terms) + weights[*d].ln()
             })
             .collect();
@@ -599,9 +674,15 @@ impl<'s, 'a> Profile<'s, 'a> {
     /// ln of the profile of one member: Σ_α w/Z · L*(α)/L*(mode) · Π_e Σ_β w · L*(α, β_e)/L*(α).
     fn member_profile(&mut self, m: usize, mode: &Slice) -> Slice {
         let candidate = self.assembly.members[m];
-        let ln_z = self.stock.prepared[candidate].detectability.max(f64::MIN_POSITIVE).ln();
+        let ln_z = self.stock.prepared[candidate]
+            .detectability
+            .max(f64::MIN_POSITIVE)
+            .ln();
         let points = self.amounts(m);
-        let peak = points.iter().map(|(_, p)| peak(&p.slice)).fold(f64::NEG_INFINITY, f64::max);
+        let peak = points
+            .iter()
+            .map(|(_, p)| peak(&p.slice))
+            .fold(f64::NEG_INFINITY, f64::max);
         let mut sums = vec![[0.0; LANES]; mode.len()];
         for (k, mut point) in points {
             if point_counts(&point, peak) {
@@ -614,7 +695,9 @@ impl<'s, 'a> Profile<'s, 'a> {
                 }
             }
         }
-        sums.into_iter().map(|sum| sum.map(|x| x.ln() - ln_z)).collect()
+        sums.into_iter()
+            .map(|sum| sum.map(|x| x.ln() - ln_z))
+            .collect()
     }
 
     /// Multiplies a slice by the integral over each emitter shift of its member.
@@ -633,7 +716,9 @@ impl<'s, 'a> Profile<'s, 'a> {
                 other[m].shifts[e] = b;
                 let own = self.replace(&other, &touched, None);
                 let changed = &point.changed;
-                let totals = self.with_replaced(&point.totals, &own, |s| value_in(changed, s).unwrap_or(&self.values[s]));
+                let totals = self.with_replaced(&point.totals, &own, |s| {
+                    value_in(changed, s).unwrap_or(&self.values[s])
+                });
                 let option = self.finish(&other, &totals);
                 for (sum, (o, at)) in mean.iter_mut().zip(option.iter().zip(&base)) {
                     for l in 0..LANES {
@@ -655,7 +740,9 @@ impl<'s, 'a> Profile<'s, 'a> {
     fn product_at_best(&mut self) -> Vec<Lanes> {
         const MOST_MOVES: usize = 3;
         for _ in 0..MOST_MOVES {
-            let moves: Vec<bool> = (0..self.assembly.members.len()).map(|m| self.jump(m)).collect();
+            let moves: Vec<bool> = (0..self.assembly.members.len())
+                .map(|m| self.jump(m))
+                .collect();
             if !moves.contains(&true) {
                 break;
             }
@@ -671,7 +758,9 @@ impl<'s, 'a> Profile<'s, 'a> {
             .amounts(m)
             .iter()
             .map(|(k, point)| (self.ln_weighted(&point.slice), *k))
-            .fold((present, self.latents[m].amount), |a, b| if b.0 > a.0 { b } else { a });
+            .fold((present, self.latents[m].amount), |a, b| {
+                if b.0 > a.0 { b } else { a }
+            });
         if best.0 <= present + BETTER_LN {
             return false;
         }
@@ -736,7 +825,9 @@ impl<'s, 'a> Profile<'s, 'a> {
             return vec![1.0; self.stock.scene.observations.len()];
         }
         let mode = self.present();
-        let amounts: Vec<Vec<(usize, Point)>> = (0..self.assembly.members.len()).map(|m| self.amounts(m)).collect();
+        let amounts: Vec<Vec<(usize, Point)>> = (0..self.assembly.members.len())
+            .map(|m| self.amounts(m))
+            .collect();
         (0..self.stock.scene.observations.len())
             .map(|j| self.unexplained_reading(j, &mode, &amounts, nodes))
             .collect()
@@ -760,14 +851,18 @@ impl<'s, 'a> Profile<'s, 'a> {
         let mut ratio = bare_mode.clone();
         subtract(&mut ratio, mode);
         for (m, points) in amounts.iter().enumerate() {
-            if !here.iter().any(|s| self.assembly.segments[*s].members.contains(&m)) {
+            if !here
+                .iter()
+                .any(|s| self.assembly.segments[*s].members.contains(&m))
+            {
                 continue;
             }
             let mut sums = vec![[[0.0; LANES]; 2]; mode.len()];
             for (_, point) in points {
                 let own = self.replace(&point.latents, &here, Some(reading));
-                let totals =
-                    self.with_replaced(&point.totals, &own, |s| value_in(&point.changed, s).unwrap_or(&self.values[s]));
+                let totals = self.with_replaced(&point.totals, &own, |s| {
+                    value_in(&point.changed, s).unwrap_or(&self.values[s])
+                });
                 let without = self.finish(&point.latents, &totals);
                 for (d, sum) in sums.iter_mut().enumerate() {
                     for l in 0..LANES {
@@ -792,7 +887,8 @@ impl<'s, 'a> Profile<'s, 'a> {
         let mut mean = 0.0;
         for (lanes, d) in ln.iter().zip(&self.shifts) {
             for l in 0..LANES {
-                let share = (nodes[*d][l] + weights[*d].ln() + self.stock.lane_ln_weight[l] - total).exp();
+                let share =
+                    (nodes[*d][l] + weights[*d].ln() + self.stock.lane_ln_weight[l] - total).exp();
                 if share > 0.0 && !lanes[l].is_nan() {
                     mean += share * lanes[l].exp().min(1.0);
                 }
@@ -820,7 +916,15 @@ fn grid(stock: &Stock, prepared: &super::prepare::Prepared) -> Vec<(Latent, f64)
         .weights()
         .iter()
         .enumerate()
-        .map(|(amount, w)| (Latent { amount, shifts: Vec::new() }, w.ln() - ln_z))
+        .map(|(amount, w)| {
+            (
+                Latent {
+                    amount,
+                    shifts: Vec::new(),
+                },
+                w.ln() - ln_z,
+            )
+        })
         .collect();
     for shift in &prepared.shifts {
         states = states
@@ -847,11 +951,20 @@ fn value_in(changed: &[Replaced], segment: usize) -> Option<&Value> {
 }
 
 fn positions<T>(items: &[T], keep: impl Fn(&T) -> bool) -> Vec<usize> {
-    items.iter().enumerate().filter(|(_, i)| keep(i)).map(|(p, _)| p).collect()
+    items
+        .iter()
+        .enumerate()
+        .filter(|(_, i)| keep(i))
+        .map(|(p, _)| p)
+        .collect()
 }
 
 fn peak(slice: &Slice) -> f64 {
-    slice.iter().flatten().copied().fold(f64::NEG_INFINITY, f64::max)
+    slice
+        .iter()
+        .flatten()
+        .copied()
+        .fold(f64::NEG_INFINITY, f64::max)
 }
 
 fn add(to: &mut Slice, from: &Slice) {

@@ -43,10 +43,17 @@ pub fn exhaustive(
         return None;
     }
     let scene = Scene::new(observations, conditions, settings);
-    let prepared: Vec<Prepared> = candidates.iter().map(|c| Prepared::new(&scene, c)).collect();
+    let prepared: Vec<Prepared> = candidates
+        .iter()
+        .map(|c| Prepared::new(&scene, c))
+        .collect();
     let stock = Stock::new(scene, prepared);
     let detectability: Vec<f64> = stock.prepared.iter().map(|p| p.detectability).collect();
-    let members_of = |set: usize| -> Vec<usize> { (0..candidates.len()).filter(|c| set >> c & 1 == 1).collect() };
+    let members_of = |set: usize| -> Vec<usize> {
+        (0..candidates.len())
+            .filter(|c| set >> c & 1 == 1)
+            .collect()
+    };
     let sets = 1usize << candidates.len();
     let weighed = |barring: bool| -> Vec<f64> {
         (0..sets)
@@ -74,7 +81,10 @@ pub fn exhaustive(
             posterior: (ln_weights[set] - total).exp(),
         })
         .collect();
-    Some(Exhaustive { detectability, entries })
+    Some(Exhaustive {
+        detectability,
+        entries,
+    })
 }
 
 /// ln Π π v Z · Π (1 − π v Z).
@@ -85,7 +95,11 @@ fn ln_prior(candidates: &[Candidate], detectability: &[f64], set: usize) -> f64 
         .enumerate()
         .map(|(c, (candidate, z))| {
             let chance = candidate.prior * candidate.shows * z;
-            if set >> c & 1 == 1 { chance.ln() } else { (1.0 - chance).ln() }
+            if set >> c & 1 == 1 {
+                chance.ln()
+            } else {
+                (1.0 - chance).ln()
+            }
         })
         .sum()
 }
@@ -100,8 +114,15 @@ fn subtracted(any: &[f64], detectability: &[f64]) -> Vec<f64> {
                 .filter(|part| part & !set == 0)
                 .map(|part| {
                     let left = set & !part;
-                    let sign = if left.count_ones() % 2 == 0 { 1.0 } else { -1.0 };
-                    let product: f64 = (0..unseen.len()).filter(|c| left >> c & 1 == 1).map(|c| unseen[c]).product();
+                    let sign = if left.count_ones() % 2 == 0 {
+                        1.0
+                    } else {
+                        -1.0
+                    };
+                    let product: f64 = (0..unseen.len())
+                        .filter(|c| left >> c & 1 == 1)
+                        .map(|c| unseen[c])
+                        .product();
                     sign * (any[part] - peak).exp() * product
                 })
                 .sum();

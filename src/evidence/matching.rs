@@ -75,7 +75,11 @@ impl Matching {
         let mut taken = 0;
         while start < self.order.len() {
             let outer = self.order[start].0;
-            let end = start + self.order[start..].iter().take_while(|o| o.0 == outer).count();
+            let end = start
+                + self.order[start..]
+                    .iter()
+                    .take_while(|o| o.0 == outer)
+                    .count();
             self.take(start, end);
             self.retire(end - 1);
             taken += 1;
@@ -92,9 +96,11 @@ impl Matching {
     /// Takes features or readings in order, whichever is cheaper.
     fn choose_side(&mut self) {
         self.order.clear();
-        self.order.extend(self.pairs.iter().enumerate().map(|(p, (i, j))| (*i, *j, p)));
+        self.order
+            .extend(self.pairs.iter().enumerate().map(|(p, (i, j))| (*i, *j, p)));
         self.other_order.clear();
-        self.other_order.extend(self.pairs.iter().enumerate().map(|(p, (i, j))| (*j, *i, p)));
+        self.other_order
+            .extend(self.pairs.iter().enumerate().map(|(p, (i, j))| (*j, *i, p)));
         self.other_order.sort_unstable();
         let by_feature = cost(&self.order, &mut self.last);
         if cost(&self.other_order, &mut self.last) < by_feature {
@@ -193,10 +199,19 @@ fn rescale(states: &mut [f64], ln_scale: &mut [f64]) {
     }
     let width = ln_scale.len();
     for (column, ln) in ln_scale.iter_mut().enumerate() {
-        let peak = states.iter().skip(column).step_by(width).copied().fold(0.0, f64::max);
+        let peak = states
+            .iter()
+            .skip(column)
+            .step_by(width)
+            .copied()
+            .fold(0.0, f64::max);
         if peak > 1.0 {
             *ln += peak.ln();
-            states.iter_mut().skip(column).step_by(width).for_each(|s| *s /= peak);
+            states
+                .iter_mut()
+                .skip(column)
+                .step_by(width)
+                .for_each(|s| *s /= peak);
         }
     }
 }
@@ -267,7 +282,13 @@ mod tests {
 
     #[test]
     fn a_crowd_beyond_the_frontier_is_no_disaster() {
-        let rows: Vec<Vec<(usize, f64)>> = (0..40).map(|_| (0..40).map(|j| (j, 2.0)).collect()).collect();
-        assert!(frontier(&rows, [1.0; LANES]).iter().all(|x| x.is_finite() && *x > 0.0));
+        let rows: Vec<Vec<(usize, f64)>> = (0..40)
+            .map(|_| (0..40).map(|j| (j, 2.0)).collect())
+            .collect();
+        assert!(
+            frontier(&rows, [1.0; LANES])
+                .iter()
+                .all(|x| x.is_finite() && *x > 0.0)
+        );
     }
 }

@@ -63,11 +63,19 @@ pub struct Scene<'a> {
 
 impl<'a> Scene<'a> {
     /// Fixes the nodes of all shared nuisances.
-    pub fn new(observations: &'a [Observation], conditions: &'a Conditions, settings: &'a Settings) -> Self {
+    pub fn new(
+        observations: &'a [Observation],
+        conditions: &'a Conditions,
+        settings: &'a Settings,
+    ) -> Self {
         let stated = observations.iter().filter_map(|o| o.strength_dex);
         let with_strengths = stated.clone().next().is_some();
         let offset = settings.offset.clone().unwrap_or_else(|| {
-            Quadrature::offset(conditions.offset_nm, settings.offset_reach, shift_spacing(observations))
+            Quadrature::offset(
+                conditions.offset_nm,
+                settings.offset_reach,
+                shift_spacing(observations),
+            )
         });
         let [low, high] = conditions.range_nm;
         let blind: f64 = conditions.blind_nm.iter().map(|[a, b]| b - a).sum();
@@ -82,7 +90,8 @@ impl<'a> Scene<'a> {
             offset,
             span_nm: (high - low - blind).max(1e-6),
             strength_uncertainty_dex: median(stated.map(|(_, u)| u)).unwrap_or(0.0),
-            median_uncertainty_nm: median(observations.iter().map(|o| o.uncertainty_nm)).unwrap_or(0.0),
+            median_uncertainty_nm: median(observations.iter().map(|o| o.uncertainty_nm))
+                .unwrap_or(0.0),
         }
     }
 
@@ -100,11 +109,20 @@ impl<'a> Scene<'a> {
     /// The factor of r that depends on how visible a feature is:
     /// (1−ε)·Φ(h/σ)/(1−p) without strength, (1−ε)·N(y; h, σ²)/((1−p)·g(y)) with one, and
     /// (1−ε)·Φ((h−y)/σ)/((1−p)·e^{−y/0.4}) for a saturated one.
-    pub fn amplitude(&self, reading: usize, visibility_dex: f64, scatter_dex: f64, missing: f64) -> f64 {
+    pub fn amplitude(
+        &self,
+        reading: usize,
+        visibility_dex: f64,
+        scatter_dex: f64,
+        missing: f64,
+    ) -> f64 {
         let observation = &self.observations[reading];
         let mean = self.settings.clutter_strength_dex;
         let seen = match observation.strength_dex {
-            None => step(visibility_dex, scatter_dex.hypot(self.strength_uncertainty_dex)),
+            None => step(
+                visibility_dex,
+                scatter_dex.hypot(self.strength_uncertainty_dex),
+            ),
             Some((y, u_y)) => {
                 let sigma = scatter_dex.hypot(u_y);
                 let clutter = (-y / mean).exp();
@@ -119,12 +137,20 @@ impl<'a> Scene<'a> {
     }
 
     /// f·(form factor)/κ_ref at one shift.
-    pub fn position(&self, reading: usize, wavelength_nm: f64, uncertainty_nm: f64, band_chance: f64, shift_nm: f64) -> f64 {
+    pub fn position(
+        &self,
+        reading: usize,
+        wavelength_nm: f64,
+        uncertainty_nm: f64,
+        band_chance: f64,
+        shift_nm: f64,
+    ) -> f64 {
         let observation = &self.observations[reading];
         let z = observation.wavelength_nm - wavelength_nm - shift_nm;
         let variance = observation.uncertainty_nm.powi(2) + uncertainty_nm.powi(2);
         let (tail, factor) = (self.settings.tail_weight, self.settings.tail_factor);
-        let density = (1.0 - tail) * normal(z, variance) + tail * normal(z, variance * factor * factor);
+        let density =
+            (1.0 - tail) * normal(z, variance) + tail * normal(z, variance * factor * factor);
         density * form_factor(observation.band, band_chance) / self.clutter_density()
     }
 
@@ -162,8 +188,14 @@ impl<'a> Scene<'a> {
 /// readings together leave open, (Σu⁻²)^−½, where the trapezoid rule still errs by less than 1e-8.
 fn shift_spacing(observations: &[Observation]) -> f64 {
     const FLOOR_NM: f64 = 0.005;
-    let finest = observations.iter().map(|o| o.uncertainty_nm).fold(f64::INFINITY, f64::min);
-    let information: f64 = observations.iter().map(|o| o.uncertainty_nm.max(FLOOR_NM).powi(-2)).sum();
+    let finest = observations
+        .iter()
+        .map(|o| o.uncertainty_nm)
+        .fold(f64::INFINITY, f64::min);
+    let information: f64 = observations
+        .iter()
+        .map(|o| o.uncertainty_nm.max(FLOOR_NM).powi(-2))
+        .sum();
     (0.5 * finest.max(FLOOR_NM)).min(information.powf(-0.5))
 }
 
@@ -223,12 +255,16 @@ impl Prepared {
             .iter()
             .map(|line| {
                 states(line.emitter)
-                    .map(|s| (1.0 - scene.detection(line.edge, s + line.level_dex, line.scatter_dex)).ln())
+                    .map(|s| {
+                        (1.0 - scene.detection(line.edge, s + line.level_dex, line.scatter_dex))
+                            .ln()
+                    })
                     .collect()
             })
             .collect();
-        let mut ln_missing_emitter: Vec<Vec<f64>> =
-            (0..shifts.len()).map(|e| vec![0.0; states(e).count()]).collect();
+        let mut ln_missing_emitter: Vec<Vec<f64>> = (0..shifts.len())
+            .map(|e| vec![0.0; states(e).count()])
+            .collect();
         for (line, row) in lines.iter().zip(&ln_missing) {
             for (sum, term) in ln_missing_emitter[line.emitter].iter_mut().zip(row) {
                 *sum += term;
@@ -248,7 +284,10 @@ impl Prepared {
 }
 
 /// α + β for every latent state of an emitter, amounts outermost.
-fn latent_states<'q>(amount: &'q Quadrature, shift: &'q Quadrature) -> impl Iterator<Item = f64> + 'q {
+fn latent_states<'q>(
+    amount: &'q Quadrature,
+    shift: &'q Quadrature,
+) -> impl Iterator<Item = f64> + 'q {
     amount
         .nodes()
         .iter()
@@ -267,7 +306,11 @@ fn emitter_shifts(candidate: &Candidate, lines: &[Line]) -> Vec<Quadrature> {
             if !visible(e) {
                 return Quadrature::fixed(0.0);
             }
-            let spread = if single { 0.0 } else { candidate.emitter_spread_dex[e] };
+            let spread = if single {
+                0.0
+            } else {
+                candidate.emitter_spread_dex[e]
+            };
             let lit = (candidate.emitter_shows[e] / candidate.shows).clamp(0.0, 1.0);
             Quadrature::normal3(spread).or_far_down(1.0 - lit)
         })
@@ -316,7 +359,11 @@ fn visible_lines(scene: &Scene, candidate: &Candidate) -> Vec<Line> {
             .fold(f64::NEG_INFINITY, f64::max)
     };
     let inside = strongest(0.5);
-    let peak = if inside.is_finite() { inside } else { strongest(0.0) };
+    let peak = if inside.is_finite() {
+        inside
+    } else {
+        strongest(0.0)
+    };
     let reach = scene.conditions.dynamic_range_dex;
     lines.retain_mut(|line| {
         line.level_dex -= peak;
@@ -335,7 +382,11 @@ fn merged_lines(scene: &Scene, candidate: &Candidate) -> Vec<Line> {
         feature(*b)
             .level_dex
             .total_cmp(&feature(*a).level_dex)
-            .then(feature(*a).wavelength_nm.total_cmp(&feature(*b).wavelength_nm))
+            .then(
+                feature(*a)
+                    .wavelength_nm
+                    .total_cmp(&feature(*b).wavelength_nm),
+            )
     });
     let mut taken = vec![false; candidate.features.len()];
     let mut lines = Vec::new();
@@ -344,11 +395,17 @@ fn merged_lines(scene: &Scene, candidate: &Candidate) -> Vec<Line> {
             continue;
         }
         let centre = feature(seed).wavelength_nm;
-        let width = if scene.settings.prepare { scene.merge_width(centre) } else { 0.0 };
+        let width = if scene.settings.prepare {
+            scene.merge_width(centre)
+        } else {
+            0.0
+        };
         let members: Vec<usize> = order
             .iter()
             .copied()
-            .filter(|i| *i == seed || (!taken[*i] && (feature(*i).wavelength_nm - centre).abs() < width))
+            .filter(|i| {
+                *i == seed || (!taken[*i] && (feature(*i).wavelength_nm - centre).abs() < width)
+            })
             .collect();
         for i in &members {
             taken[*i] = true;
@@ -388,7 +445,12 @@ fn merge(candidate: &Candidate, seed: usize, members: &[usize]) -> Line {
 }
 
 /// All pairs whose r can reach the gate at some node.
-fn pairs(scene: &Scene, lines: &[Line], shifts: &[Quadrature], ln_missing: &[Vec<f64>]) -> Vec<Pair> {
+fn pairs(
+    scene: &Scene,
+    lines: &[Line],
+    shifts: &[Quadrature],
+    ln_missing: &[Vec<f64>],
+) -> Vec<Pair> {
     let mut pairs = Vec::new();
     for (i, line) in lines.iter().enumerate() {
         for reading in 0..scene.observations.len() {
@@ -397,7 +459,13 @@ fn pairs(scene: &Scene, lines: &[Line], shifts: &[Quadrature], ln_missing: &[Vec
                 .nodes()
                 .iter()
                 .map(|shift| {
-                    scene.position(reading, line.wavelength_nm, line.uncertainty_nm, line.band_chance, *shift)
+                    scene.position(
+                        reading,
+                        line.wavelength_nm,
+                        line.uncertainty_nm,
+                        line.band_chance,
+                        *shift,
+                    )
                 })
                 .collect();
             let best = position.iter().copied().fold(0.0, f64::max);
@@ -413,7 +481,12 @@ fn pairs(scene: &Scene, lines: &[Line], shifts: &[Quadrature], ln_missing: &[Vec
                 .collect();
             let largest = amplitude.iter().copied().fold(0.0, f64::max);
             if best * largest >= scene.settings.gate && best * largest > 0.0 {
-                pairs.push(Pair { line: i, reading, position, amplitude });
+                pairs.push(Pair {
+                    line: i,
+                    reading,
+                    position,
+                    amplitude,
+                });
             }
         }
     }

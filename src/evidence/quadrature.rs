@@ -115,8 +115,17 @@ mod tests {
     #[test]
     fn gauss_hermite_is_exact_to_the_fifth_moment() {
         let q = Quadrature::normal3(0.7);
-        for (power, expected) in [(0, 1.0), (1, 0.0), (2, 0.49), (3, 0.0), (4, 3.0 * 0.49 * 0.49)] {
-            assert!((moment(&q, power) - expected).abs() < 1e-12, "moment {power}");
+        for (power, expected) in [
+            (0, 1.0),
+            (1, 0.0),
+            (2, 0.49),
+            (3, 0.0),
+            (4, 3.0 * 0.49 * 0.49),
+        ] {
+            assert!(
+                (moment(&q, power) - expected).abs() < 1e-12,
+                "moment {power}"
+            );
         }
     }
 

@@ -57,12 +57,24 @@ pub fn search(stock: &Stock, ln_odds: &[f64]) -> Found {
         .filter(|(gain, _)| gain.is_finite())
         .collect();
     order.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1)));
-    Search { stock, ln_odds, singles, order, nodes: Vec::new() }.run()
+    Search {
+        stock,
+        ln_odds,
+        singles,
+        order,
+        nodes: Vec::new(),
+    }
+    .run()
 }
 
 /// max over shift nodes and lanes of ln E*.
 fn best_node(weighed: &Weighed) -> f64 {
-    weighed.nodes.iter().flatten().copied().fold(f64::NEG_INFINITY, f64::max)
+    weighed
+        .nodes
+        .iter()
+        .flatten()
+        .copied()
+        .fold(f64::NEG_INFINITY, f64::max)
 }
 
 struct Search<'s, 'a> {
@@ -96,9 +108,19 @@ impl Search<'_, '_> {
         if self.nodes.len() >= settings.search_limit {
             bound = self.bound(&self.open_children());
         }
-        let mut ranked: Vec<(Weighed, f64)> = self.nodes.into_iter().map(|n| (n.weighed, n.ln_weight)).collect();
-        ranked.sort_by(|a, b| b.1.total_cmp(&a.1).then_with(|| a.0.members.cmp(&b.0.members)));
-        Found { ranked, bound: if bound.is_finite() { bound } else { 0.0 } }
+        let mut ranked: Vec<(Weighed, f64)> = self
+            .nodes
+            .into_iter()
+            .map(|n| (n.weighed, n.ln_weight))
+            .collect();
+        ranked.sort_by(|a, b| {
+            b.1.total_cmp(&a.1)
+                .then_with(|| a.0.members.cmp(&b.0.members))
+        });
+        Found {
+            ranked,
+            bound: if bound.is_finite() { bound } else { 0.0 },
+        }
     }
 
     /// (bound on ln mass of the child and all below it, node, candidate place), best first.
@@ -130,8 +152,13 @@ impl Search<'_, '_> {
 
     /// Estimates the best open children; a node that was only estimated is weighed first.
     fn evaluate(&mut self, open: &[(f64, usize, usize)]) {
-        let batch: Vec<(usize, usize)> = open.iter().take(BATCH).map(|(_, n, t)| (*n, *t)).collect();
-        let rough: Vec<usize> = batch.iter().map(|(n, _)| *n).filter(|n| self.nodes[*n].weighed.rough).collect();
+        let batch: Vec<(usize, usize)> =
+            open.iter().take(BATCH).map(|(_, n, t)| (*n, *t)).collect();
+        let rough: Vec<usize> = batch
+            .iter()
+            .map(|(n, _)| *n)
+            .filter(|n| self.nodes[*n].weighed.rough)
+            .collect();
         if !rough.is_empty() {
             self.weigh_fully(rough);
             return;
@@ -160,11 +187,20 @@ impl Search<'_, '_> {
 
     /// Weighs estimated compositions that matter, best first; says whether there were any.
     fn refine(&mut self) -> bool {
-        let best = self.nodes.iter().map(|n| n.ln_weight).fold(f64::NEG_INFINITY, f64::max);
+        let best = self
+            .nodes
+            .iter()
+            .map(|n| n.ln_weight)
+            .fold(f64::NEG_INFINITY, f64::max);
         let mut rough: Vec<usize> = (0..self.nodes.len())
             .filter(|n| self.nodes[*n].weighed.rough && self.nodes[*n].ln_weight > best + ROUGH_LN)
             .collect();
-        rough.sort_by(|a, b| self.nodes[*b].ln_weight.total_cmp(&self.nodes[*a].ln_weight).then(a.cmp(b)));
+        rough.sort_by(|a, b| {
+            self.nodes[*b]
+                .ln_weight
+                .total_cmp(&self.nodes[*a].ln_weight)
+                .then(a.cmp(b))
+        });
         rough.truncate(BATCH);
         let any = !rough.is_empty();
         self.weigh_fully(rough);
@@ -189,15 +225,27 @@ impl Search<'_, '_> {
     }
 
     fn ln_weight(&self, places: &[usize], weighed: &Weighed) -> f64 {
-        weighed.ln_evidence + places.iter().map(|p| self.ln_odds[self.order[*p].1]).sum::<f64>()
+        weighed.ln_evidence
+            + places
+                .iter()
+                .map(|p| self.ln_odds[self.order[*p].1])
+                .sum::<f64>()
     }
 
     /// Members in ascending order with the states to begin from: the parent's mode and the
     /// newcomer's own.
     fn start(&self, parent: &Weighed, newcomer: usize) -> (Vec<usize>, Vec<Latent>) {
-        let mut pairs: Vec<(usize, Latent)> = parent.members.iter().copied().zip(parent.mode.iter().cloned()).collect();
+        let mut pairs: Vec<(usize, Latent)> = parent
+            .members
+            .iter()
+            .copied()
+            .zip(parent.mode.iter().cloned())
+            .collect();
         let own = self.singles[newcomer].mode.first().cloned();
-        pairs.push((newcomer, own.unwrap_or_else(|| middle(self.stock, newcomer))));
+        pairs.push((
+            newcomer,
+            own.unwrap_or_else(|| middle(self.stock, newcomer)),
+        ));
         pairs.sort_by_key(|(c, _)| *c);
         pairs.into_iter().unzip()
     }
@@ -213,7 +261,13 @@ impl Search<'_, '_> {
             }
         }
         let done = vec![false; self.order.len()];
-        self.nodes.push(Node { places, weighed, ln_weight, gain, done });
+        self.nodes.push(Node {
+            places,
+            weighed,
+            ln_weight,
+            gain,
+            done,
+        });
         self.learn(self.nodes.len() - 1);
     }
 
@@ -250,7 +304,12 @@ impl Search<'_, '_> {
         let scene = &self.stock.scene;
         let total = ln_total(self.stock, &base.nodes);
         let mut most = f64::NEG_INFINITY;
-        for ((b, w), weight) in base.nodes.iter().zip(&with.nodes).zip(scene.offset.weights()) {
+        for ((b, w), weight) in base
+            .nodes
+            .iter()
+            .zip(&with.nodes)
+            .zip(scene.offset.weights())
+        {
             for l in 0..LANES {
                 let mass = b[l] + weight.ln() + self.stock.lane_ln_weight[l] - total;
                 if mass > RELEVANT_LN {

@@ -8,8 +8,8 @@ use super::prepare::{Prepared, Scene};
 use super::search::{Found, search};
 use super::settings::Settings;
 use super::{
-    Candidate, Cause, Conditions, Inference, MissingFeature, Observation, Posterior, Presence, ReadingEvidence,
-    WeighedComposition,
+    Candidate, Cause, Conditions, Inference, MissingFeature, Observation, Posterior, Presence,
+    ReadingEvidence, WeighedComposition,
 };
 use rayon::prelude::*;
 use std::collections::BTreeMap;
@@ -28,7 +28,11 @@ const SHIFTED: f64 = 2.5;
 const EXTENDED_REACH: f64 = 16.0;
 
 /// Weighs every composition of the candidates against the readings, with the default constants.
-pub fn infer(observations: &[Observation], conditions: &Conditions, candidates: &[Candidate]) -> Inference {
+pub fn infer(
+    observations: &[Observation],
+    conditions: &Conditions,
+    candidates: &[Candidate],
+) -> Inference {
     infer_with(observations, conditions, candidates, &Settings::default())
 }
 
@@ -40,17 +44,27 @@ pub fn infer_with(
     settings: &Settings,
 ) -> Inference {
     let first = infer_once(observations, conditions, candidates, settings);
-    if settings.offset.is_some() || conditions.offset_nm <= 0.0 || !shift_suspected(&first, conditions) {
+    if settings.offset.is_some()
+        || conditions.offset_nm <= 0.0
+        || !shift_suspected(&first, conditions)
+    {
         return first;
     }
-    let wider = Settings { offset_reach: EXTENDED_REACH, ..settings.clone() };
+    let wider = Settings {
+        offset_reach: EXTENDED_REACH,
+        ..settings.clone()
+    };
     infer_once(observations, conditions, candidates, &wider)
 }
 
 /// Whether the readings may lie further off together than the shift nodes reach.
 fn shift_suspected(inference: &Inference, conditions: &Conditions) -> bool {
     let limit = SHIFTED * conditions.offset_nm;
-    let unexplained = inference.readings.iter().filter(|r| r.unexplained > 0.8).count();
+    let unexplained = inference
+        .readings
+        .iter()
+        .filter(|r| r.unexplained > 0.8)
+        .count();
     let residuals: Vec<f64> = inference
         .readings
         .iter()
@@ -68,7 +82,10 @@ fn infer_once(
     settings: &Settings,
 ) -> Inference {
     let scene = Scene::new(observations, conditions, settings);
-    let prepared: Vec<Prepared> = candidates.par_iter().map(|c| Prepared::new(&scene, c)).collect();
+    let prepared: Vec<Prepared> = candidates
+        .par_iter()
+        .map(|c| Prepared::new(&scene, c))
+        .collect();
     let stock = Stock::new(scene, prepared);
     let ln_odds: Vec<f64> = candidates
         .iter()
@@ -78,15 +95,19 @@ fn infer_once(
             (chance / (1.0 - chance)).ln()
         })
         .collect();
-    let t=std::time::Instant::now();let found = search(&stock, &ln_odds);eprintln!("search {:?} nodes {} weigh {} calls {} miss {} cols {} fin {} segs {}",t.elapsed(),found.ranked.len(),super::composition::WEIGH.load(std::sync::atomic::Ordering::Relaxed),super::composition::CALLS.load(std::sync::atomic::Ordering::Relaxed),super::composition::MISS.load(std::sync::atomic::Ordering::Relaxed),super::composition::COLS.load(std::sync::atomic::Ordering::Relaxed),super::composition::FIN.load(std::sync::atomic::Ordering::Relaxed),Assembly::new(&stock,&found.ranked[0].0.members).segments.len());
-    let t=std::time::Instant::now();let r=summarise(&stock, candidates, &found);eprintln!("summary {:?}",t.elapsed());r
+    let found = search(&stock, &ln_odds);
+    summarise(&stock, candidates, &found)
 }
 
 fn summarise(stock: &Stock, candidates: &[Candidate], found: &Found) -> Inference {
     let posterior = normalised(found, 0.0);
     let detected: Vec<f64> = (0..candidates.len())
         .map(|c| {
-            let holds = found.ranked.iter().zip(&posterior).filter(|((w, _), _)| w.members.contains(&c));
+            let holds = found
+                .ranked
+                .iter()
+                .zip(&posterior)
+                .filter(|((w, _), _)| w.members.contains(&c));
             holds.map(|(_, p)| p).sum::<f64>().min(1.0)
         })
         .collect();
@@ -98,12 +119,14 @@ fn summarise(stock: &Stock, candidates: &[Candidate], found: &Found) -> Inferenc
         .take(SPEAKERS)
         .map(|((w, _), p)| (w, *p))
         .collect();
-    let views: Vec<View> = speakers.par_iter().map(|(w, _)| View::of(stock, w)).collect();
+    let views: Vec<View> = speakers
+        .par_iter()
+        .map(|(w, _)| View::of(stock, w))
+        .collect();
     let readings = readings(stock, candidates, &speakers, &views);
     let leader_view = views.first();
-    let on_one_line = |c: usize| {
-        leader_view.is_some_and(|v| v.members.contains(&c) && v.readings_of(c) == 1)
-    };
+    let on_one_line =
+        |c: usize| leader_view.is_some_and(|v| v.members.contains(&c) && v.readings_of(c) == 1);
     let presence = candidates
         .iter()
         .enumerate()
@@ -125,7 +148,8 @@ fn summarise(stock: &Stock, candidates: &[Candidate], found: &Found) -> Inferenc
         presence,
         missing: leader_view.map(|v| v.missing(stock)).unwrap_or_default(),
         offset_nm: offset_posterior(stock, leader),
-        residual_rms_sigma: leader_view.and_then(|v| v.residual_rms(stock, offset_posterior(stock, leader).mean)),
+        residual_rms_sigma: leader_view
+            .and_then(|v| v.residual_rms(stock, offset_posterior(stock, leader).mean)),
         readings,
         leader_with_priors_halved: leader_at(found, -std::f64::consts::LN_2),
         leader_with_priors_doubled: leader_at(found, std::f64::consts::LN_2),
@@ -135,7 +159,11 @@ fn summarise(stock: &Stock, candidates: &[Candidate], found: &Found) -> Inferenc
 
 /// Posterior of the ranked compositions, with ln of every member's prior odds raised by `lift`.
 fn normalised(found: &Found, lift: f64) -> Vec<f64> {
-    let ln: Vec<f64> = found.ranked.iter().map(|(w, ln)| ln + lift * w.members.len() as f64).collect();
+    let ln: Vec<f64> = found
+        .ranked
+        .iter()
+        .map(|(w, ln)| ln + lift * w.members.len() as f64)
+        .collect();
     let total = ln_sum_exp(&ln);
     ln.iter().map(|x| (x - total).exp()).collect()
 }
@@ -151,7 +179,12 @@ fn leader_at(found: &Found, lift: f64) -> Vec<usize> {
 }
 
 /// P(in the sample) = P_det + (1 − P_det) π (1 − vZ)/(1 − πvZ).
-fn presence(candidate: &Candidate, prepared: &Prepared, detected: f64, rests_on_one_line: bool) -> Presence {
+fn presence(
+    candidate: &Candidate,
+    prepared: &Prepared,
+    detected: f64,
+    rests_on_one_line: bool,
+) -> Presence {
     let testable = candidate.shows * prepared.detectability;
     let hidden = candidate.prior * (1.0 - testable) / (1.0 - candidate.prior * testable);
     Presence {
@@ -163,10 +196,19 @@ fn presence(candidate: &Candidate, prepared: &Prepared, detected: f64, rests_on_
     }
 }
 
-fn without_ubiquitous(candidates: &[Candidate], found: &Found, posterior: &[f64]) -> Vec<(Vec<usize>, f64)> {
+fn without_ubiquitous(
+    candidates: &[Candidate],
+    found: &Found,
+    posterior: &[f64],
+) -> Vec<(Vec<usize>, f64)> {
     let mut sums: BTreeMap<Vec<usize>, f64> = BTreeMap::new();
     for ((weighed, _), p) in found.ranked.iter().zip(posterior) {
-        let rest = weighed.members.iter().copied().filter(|c| candidates[*c].prior < UBIQUITOUS).collect();
+        let rest = weighed
+            .members
+            .iter()
+            .copied()
+            .filter(|c| candidates[*c].prior < UBIQUITOUS)
+            .collect();
         *sums.entry(rest).or_default() += p;
     }
     let mut list: Vec<(Vec<usize>, f64)> = sums.into_iter().collect();
@@ -178,20 +220,33 @@ fn offset_posterior(stock: &Stock, weighed: &Weighed) -> Posterior {
     let total = ln_total(stock, &weighed.nodes);
     let offset = &stock.scene.offset;
     let (mut mean, mut square) = (0.0, 0.0);
-    for ((node, x), w) in weighed.nodes.iter().zip(offset.nodes()).zip(offset.weights()) {
+    for ((node, x), w) in weighed
+        .nodes
+        .iter()
+        .zip(offset.nodes())
+        .zip(offset.weights())
+    {
         let share: f64 = (0..LANES)
             .map(|l| (node[l] + w.ln() + stock.lane_ln_weight[l] - total).exp())
             .sum();
         mean += share * x;
         square += share * x * x;
     }
-    Posterior { mean, sd: (square - mean * mean).max(0.0).sqrt() }
+    Posterior {
+        mean,
+        sd: (square - mean * mean).max(0.0).sqrt(),
+    }
 }
 
 /// The shift node and lane that carry most of a composition's evidence.
 fn best_place(stock: &Stock, weighed: &Weighed) -> (usize, usize) {
     let mut best = (f64::NEG_INFINITY, 0, 0);
-    for (d, (node, w)) in weighed.nodes.iter().zip(stock.scene.offset.weights()).enumerate() {
+    for (d, (node, w)) in weighed
+        .nodes
+        .iter()
+        .zip(stock.scene.offset.weights())
+        .enumerate()
+    {
         for l in 0..LANES {
             let value = node[l] + w.ln() + stock.lane_ln_weight[l];
             if value > best.0 {
@@ -222,7 +277,11 @@ impl View {
             .collect();
         let mut profile = Profile::new(stock, &assembly, weighed.mode.clone(), true);
         let unexplained = profile.unexplained(&weighed.nodes);
-        Self { members: weighed.members.clone(), unexplained, lines }
+        Self {
+            members: weighed.members.clone(),
+            unexplained,
+            lines,
+        }
     }
 
     /// Candidate, line index and φ of the part that holds most of a realised line.
@@ -271,7 +330,12 @@ impl View {
             .iter()
             .map(|(line, found)| {
                 let (candidate, i) = self.owner(line);
-                (candidate, i, line.detection, found.iter().map(|(_, p)| p).sum())
+                (
+                    candidate,
+                    i,
+                    line.detection,
+                    found.iter().map(|(_, p)| p).sum(),
+                )
             })
             .collect()
     }
@@ -293,7 +357,12 @@ impl View {
     }
 }
 
-fn readings(stock: &Stock, candidates: &[Candidate], speakers: &[(&Weighed, f64)], views: &[View]) -> Vec<ReadingEvidence> {
+fn readings(
+    stock: &Stock,
+    candidates: &[Candidate],
+    speakers: &[(&Weighed, f64)],
+    views: &[View],
+) -> Vec<ReadingEvidence> {
     let heard: f64 = speakers.iter().map(|(_, p)| p).sum();
     (0..stock.scene.observations.len())
         .map(|j| {
@@ -306,19 +375,38 @@ fn readings(stock: &Stock, candidates: &[Candidate], speakers: &[(&Weighed, f64)
                     for (_, chance) in found.iter().filter(|(reading, _)| *reading == j) {
                         let (candidate, i) = view.owner(line);
                         let cause = cause(stock, candidates, line, (candidate, i), j);
-                        causes.entry((candidate, cause.feature)).or_insert(cause).probability += share * chance;
+                        causes
+                            .entry((candidate, cause.feature))
+                            .or_insert(cause)
+                            .probability += share * chance;
                     }
                 }
             }
-            let mut causes: Vec<Cause> = causes.into_values().filter(|c| c.probability >= 0.01).collect();
-            causes.sort_by(|a, b| b.probability.total_cmp(&a.probability).then(a.feature_nm.total_cmp(&b.feature_nm)));
-            ReadingEvidence { unexplained: unexplained.clamp(0.0, 1.0), causes }
+            let mut causes: Vec<Cause> = causes
+                .into_values()
+                .filter(|c| c.probability >= 0.01)
+                .collect();
+            causes.sort_by(|a, b| {
+                b.probability
+                    .total_cmp(&a.probability)
+                    .then(a.feature_nm.total_cmp(&b.feature_nm))
+            });
+            ReadingEvidence {
+                unexplained: unexplained.clamp(0.0, 1.0),
+                causes,
+            }
         })
         .collect()
 }
 
 /// A cause with probability zero, to be added to.
-fn cause(stock: &Stock, candidates: &[Candidate], line: &Realised, (candidate, i): (usize, usize), reading: usize) -> Cause {
+fn cause(
+    stock: &Stock,
+    candidates: &[Candidate],
+    line: &Realised,
+    (candidate, i): (usize, usize),
+    reading: usize,
+) -> Cause {
     let shape = &stock.prepared[candidate].lines[i];
     let o = &stock.scene.observations[reading];
     let residual_nm = o.wavelength_nm - line.wavelength_nm;
