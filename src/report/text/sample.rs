@@ -224,7 +224,7 @@ fn reading_row(reading: &ReadingView) -> Vec<Cell> {
     vec![
         Cell::new(row),
         Cell::new(position),
-        Cell::new(residual.map_or_else(|| UNKNOWN.to_owned(), |sigma| format!("{sigma:+.1}"))),
+        Cell::new(residual.map_or_else(|| UNKNOWN.to_owned(), signed)),
         Cell::painted(reading.standing, standing_style(reading.standing)),
         Cell::new(
             reading
@@ -233,6 +233,16 @@ fn reading_row(reading: &ReadingView) -> Vec<Cell> {
                 .map_or_else(|| UNKNOWN.to_owned(), cause),
         ),
     ]
+}
+
+/// One decimal with its sign; what rounds to zero has none.
+fn signed(sigma: f64) -> String {
+    let shown = format!("{sigma:+.1}");
+    if shown.ends_with("0.0") && sigma.abs() < 1.0 {
+        "0.0".to_owned()
+    } else {
+        shown
+    }
 }
 
 fn standing_style(standing: &str) -> Style {
