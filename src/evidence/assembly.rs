@@ -2,7 +2,7 @@
 //! have to be assigned together.
 
 use super::blend::{Part, absorb, blend};
-use super::matching::{LANES, Lanes, Matching};
+use super::matching::{LANES, Lanes, Matching, work as matching_work};
 use super::prepare::{Prepared, Scene};
 
 /// What all compositions of one inference are built from.
@@ -449,6 +449,9 @@ fn sums(
         return;
     }
     work.find_live(stock.scene.settings.gate, is_barred, skip);
+    if stock.scene.settings.gate > 0.0 {
+        work.thin();
+    }
     let Workspace {
         matching,
         live,
@@ -495,6 +498,39 @@ fn sums(
 }
 
 impl Workspace {
+    /// Where readings crowd so much that the sum would take long, leaves out pairs far weaker
+    /// than all that could explain the same reading together.
+    fn thin(&mut self) {
+        /// Steps of one pair and one mask that a sum may take.
+        const AFFORDABLE: f64 = 4000.0;
+        const SHARES: [f64; 4] = [1e-3, 1e-2, 3e-2, 0.1];
+        let Self { reading, r, shifts, live, rivals, .. } = self;
+        let row = |q: usize| &r[q * *shifts..][..*shifts];
+        for share in SHARES {
+            let pairs: Vec<(usize, usize)> =
+                live.iter().enumerate().flat_map(|(i, qs)| qs.iter().map(move |q| (i, *q))).collect();
+            let ends: Vec<(usize, usize)> = pairs.iter().map(|(i, q)| (*i, reading[*q])).collect();
+            if matching_work(&ends) <= AFFORDABLE {
+                return;
+            }
+            let count = ends.iter().map(|(_, j)| j + 1).max().unwrap_or(0);
+            rivals.clear();
+            rivals.resize(count * *shifts, 0.0);
+            for (_, q) in &pairs {
+                for (to, r) in rivals[reading[*q] * *shifts..][..*shifts].iter_mut().zip(row(*q)) {
+                    *to += r;
+                }
+            }
+            for qs in live.iter_mut() {
+                qs.retain(|q| {
+                    let rivals = &rivals[reading[*q] * *shifts..][..*shifts];
+                    row(*q).iter().zip(rivals).any(|(r, all)| *r > share * all)
+                });
+            }
+            live.retain(|qs| !qs.is_empty());
+        }
+    }
+
     /// The pairs that count, line by line: r above the gate at some shift, and above it still
     /// after a rival that can explain nothing else. A reading j with lines that reach only it,
     /// Σ r = R, is left over with probability at most 1/(1 + R), so another pair there can carry

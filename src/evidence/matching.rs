@@ -168,6 +168,16 @@ impl Matching {
     }
 }
 
+/// What a sum over these (feature, reading) pairs would cost from the cheaper side, in steps of
+/// one pair and one mask.
+pub fn work(pairs: &[(usize, usize)]) -> f64 {
+    let mut last = Vec::new();
+    let by_feature: Vec<_> = pairs.iter().map(|(i, j)| (*i, *j, 0)).collect();
+    let mut by_reading: Vec<_> = pairs.iter().map(|(i, j)| (*j, *i, 0)).collect();
+    by_reading.sort_unstable();
+    cost(&by_feature, &mut last).min(cost(&by_reading, &mut last))
+}
+
 /// Multiplications the sum would cost; fills in the last place of each one held.
 fn cost(order: &[(usize, usize, usize)], last: &mut Vec<usize>) -> f64 {
     let count = order.iter().map(|o| o.1 + 1).max().unwrap_or(0);
