@@ -39,9 +39,8 @@ pub fn preset(kind: InstrumentKind) -> &'static Preset {
     }
 }
 
-/// What an eye sees of lines in a darkened room, nm. It sees as far as 390 and 780 nm, but a line
-/// there is noticed only if it is looked for: a substance with nothing but such lines is not missed.
-const EYE_RANGE_NM: [f64; 2] = [400.0, 720.0];
+/// What an eye sees of bright lines in a darkened room, nm; the red of potassium is in it.
+const EYE_RANGE_NM: [f64; 2] = [400.0, 780.0];
 
 /// Hand-held, a printed scale with divisions of 5 or 10 nm beside the slit image; the scale
 /// shifts with the position of the eye, which is the common offset.

@@ -150,15 +150,21 @@ pub(super) fn interpolate(points: &[(f64, f64)], x: f64) -> f64 {
     }
 }
 
-/// The eye's response, decades below its peak at 555 nm; nothing outside 390-780 nm.
+/// How much of the photopic decades count for lines seen one by one.
 ///
-/// A watcher at a spectroscope sees single lines on dark ground and finds far red and
-/// violet somewhat better than this daylight curve says, and people differ there by
-/// about 0.3 decades; the scatter of every strength in the model covers that.
+/// The photopic curve compares brightness side by side. A watcher at a spectroscope sees single
+/// lines, far above threshold, on dark ground with a partly adapted eye, and moves towards a weak
+/// one until it shows: the red lines of potassium at 766-770 nm and the violet of mercury at
+/// 405 nm are read in every class. Half the decades, common practice, no source.
+const SINGLE_LINES: f64 = 0.5;
+
+/// The eye's response to single lines, decades below its peak at 555 nm; nothing outside
+/// 390-780 nm. People differ at both ends by about 0.3 decades; the scatter of every strength in
+/// the model covers that.
 fn eye_dex(wavelength_nm: f64) -> f64 {
     let [low, high] = EYE_RANGE_NM;
     match (low..=high).contains(&wavelength_nm) {
-        true => interpolate(&EYE, wavelength_nm),
+        true => SINGLE_LINES * interpolate(&EYE, wavelength_nm),
         false => UNSEEN_DEX,
     }
 }
@@ -209,7 +215,7 @@ mod tests {
             (650.0, 0.107),
             (700.0, 0.0041),
         ] {
-            let off = Response::Eye.decades(nm) - f64::log10(v);
+            let off = Response::Eye.decades(nm) / SINGLE_LINES - f64::log10(v);
             let allowed = if nm < 460.0 { 0.1 } else { 0.01 };
             assert!(off.abs() < allowed, "{nm} nm is off by {off} dex");
         }
@@ -219,7 +225,7 @@ mod tests {
     fn eye_is_raised_in_the_violet_and_blind_beyond_its_ends() {
         // CIE 1924 V(400) = .000396, V(410) = .00121, from memory.
         for (nm, v) in [(400.0, 0.000396), (410.0, 0.00121)] {
-            let raised = Response::Eye.decades(nm) - f64::log10(v);
+            let raised = Response::Eye.decades(nm) / SINGLE_LINES - f64::log10(v);
             assert!(
                 (0.7..0.9).contains(&raised),
                 "{nm} nm is raised by {raised} dex"
