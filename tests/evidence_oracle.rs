@@ -330,6 +330,7 @@ fn substance(prior: f64, shows: f64, lines: &[(f64, f64)]) -> Candidate {
         prior,
         shows,
         emitter_spread_dex: vec![0.0],
+        emitter_shows: vec![shows],
         features: lines
             .iter()
             .map(|(wavelength_nm, level_dex)| CandidateFeature {

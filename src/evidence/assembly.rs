@@ -504,11 +504,21 @@ impl Workspace {
         /// Steps of one pair and one mask that a sum may take.
         const AFFORDABLE: f64 = 4000.0;
         const SHARES: [f64; 4] = [1e-3, 1e-2, 3e-2, 0.1];
-        let Self { reading, r, shifts, live, rivals, .. } = self;
+        let Self {
+            reading,
+            r,
+            shifts,
+            live,
+            rivals,
+            ..
+        } = self;
         let row = |q: usize| &r[q * *shifts..][..*shifts];
         for share in SHARES {
-            let pairs: Vec<(usize, usize)> =
-                live.iter().enumerate().flat_map(|(i, qs)| qs.iter().map(move |q| (i, *q))).collect();
+            let pairs: Vec<(usize, usize)> = live
+                .iter()
+                .enumerate()
+                .flat_map(|(i, qs)| qs.iter().map(move |q| (i, *q)))
+                .collect();
             let ends: Vec<(usize, usize)> = pairs.iter().map(|(i, q)| (*i, reading[*q])).collect();
             if matching_work(&ends) <= AFFORDABLE {
                 return;
@@ -517,7 +527,10 @@ impl Workspace {
             rivals.clear();
             rivals.resize(count * *shifts, 0.0);
             for (_, q) in &pairs {
-                for (to, r) in rivals[reading[*q] * *shifts..][..*shifts].iter_mut().zip(row(*q)) {
+                for (to, r) in rivals[reading[*q] * *shifts..][..*shifts]
+                    .iter_mut()
+                    .zip(row(*q))
+                {
                     *to += r;
                 }
             }

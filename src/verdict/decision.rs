@@ -39,8 +39,8 @@ pub(super) fn decide(case: &Case, group: &LeadingGroup, warnings: &[Warning]) ->
         };
     }
     let capped = warnings.iter().any(Warning::caps_decision);
-    let settled =
-        group.posterior >= DECISIVE_POSTERIOR && case.inference.untested_mass_bound < UNTESTED_MASS;
+    let settled = group.inseparable_posterior >= DECISIVE_POSTERIOR
+        && case.inference.untested_mass_bound < UNTESTED_MASS;
     if settled && !capped {
         Decision::Decisive
     } else {

@@ -1,7 +1,7 @@
 //! Groups of substances that the readings cannot tell apart.
 
 use super::case::Case;
-use super::thresholds::{EITHER_OR_RATIO, EXPLAINS_WHEN_PRESENT};
+use super::thresholds::{COINCIDING_DEX, EITHER_OR_RATIO, EXPLAINS_WHEN_PRESENT, LOOKED_FOR_DEX};
 use super::{EitherOr, SubstanceName};
 
 /// The leading composition with the compositions that it cannot be told from.
@@ -11,6 +11,9 @@ pub(super) struct LeadingGroup {
     pub swaps: Vec<Vec<usize>>,
     /// Posterior of all compositions of the group together.
     pub posterior: f64,
+    /// The part of it in which all that can be seen coincides: no further reading with this
+    /// set-up could part those, so that the group can be an answer.
+    pub inseparable_posterior: f64,
 }
 
 impl LeadingGroup {
@@ -46,11 +49,13 @@ pub(super) fn leading_group(case: &Case) -> LeadingGroup {
         return LeadingGroup {
             swaps: Vec::new(),
             posterior: 0.0,
+            inseparable_posterior: 0.0,
         };
     };
     let mut group = LeadingGroup {
         swaps: Vec::new(),
         posterior: leader.posterior,
+        inseparable_posterior: leader.posterior,
     };
     for other in compositions {
         let comparable =
@@ -62,6 +67,9 @@ pub(super) fn leading_group(case: &Case) -> LeadingGroup {
             continue;
         }
         group.posterior += other.posterior;
+        if covers(case, member, alternative) && covers(case, alternative, member) {
+            group.inseparable_posterior += other.posterior;
+        }
         match group
             .swaps
             .iter_mut()
@@ -72,6 +80,7 @@ pub(super) fn leading_group(case: &Case) -> LeadingGroup {
         }
     }
     group.posterior = group.posterior.min(1.0);
+    group.inseparable_posterior = group.inseparable_posterior.min(1.0);
     group
 }
 
@@ -88,6 +97,25 @@ fn swapped(leader: &[usize], other: &[usize]) -> Option<(usize, usize)> {
 fn explain_the_same(case: &Case, a: usize, b: usize) -> bool {
     let readings = readings_explained(case, a);
     !readings.is_empty() && readings == readings_explained(case, b)
+}
+
+/// Whether every feature of `a` that would be looked for has one of `b` within the resolution.
+fn covers(case: &Case, a: usize, b: usize) -> bool {
+    let seen = |candidate: usize, within_dex: f64| -> Vec<f64> {
+        case.relative_features(candidate)
+            .into_iter()
+            .filter(|(feature, level)| {
+                *level >= -within_dex && case.is_visible(feature.wavelength_nm)
+            })
+            .map(|(feature, _)| feature.wavelength_nm)
+            .collect()
+    };
+    let others = seen(b, COINCIDING_DEX);
+    seen(a, LOOKED_FOR_DEX).iter().all(|x| {
+        others
+            .iter()
+            .any(|y| (x - y).abs() < case.setup.resolution_nm())
+    })
 }
 
 /// Readings that a candidate causes more often than not when it is present.

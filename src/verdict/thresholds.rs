@@ -75,3 +75,10 @@ pub const NEXT_READING_BITS: f64 = 0.02;
 
 /// No more further readings than this are proposed.
 pub const NEXT_READINGS_KEPT: usize = 5;
+
+/// Features down to this far below the strongest visible one, decades, are looked for when two
+/// substances are told apart: a school reading goes about a decade deep.
+pub(super) const LOOKED_FOR_DEX: f64 = 1.0;
+
+/// Features of the other substance down to this far below its strongest can stand in for them.
+pub(super) const COINCIDING_DEX: f64 = 1.5;

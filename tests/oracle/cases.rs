@@ -235,6 +235,12 @@ fn candidate(dice: &mut Dice, recipe: &Recipe, w: f64, u: f64, taken: &mut Vec<f
         emitter_spread_dex: (0..emitters)
             .map(|_| [0.3, 0.5, 1.0][dice.below(3)])
             .collect(),
+        emitter_shows: (0..emitters)
+            .map(|e| match e {
+                0 => shows,
+                _ => shows * [1.0, 0.6, 0.1][dice.below(3)],
+            })
+            .collect(),
         features,
     }
 }

@@ -480,7 +480,8 @@ impl<'a> Oracle<'a> {
     }
 }
 
-/// β nodes per emitter; a substance of which one emitter shows needs none.
+/// β nodes per emitter; a substance of which one emitter shows needs none against itself. An
+/// emitter excited less surely than the surest may be silent: 12 decades down.
 fn shifts(candidate: &Candidate, spots: &[Spot]) -> Vec<Vec<(f64, f64)>> {
     let shown: Vec<bool> = (0..candidate.emitter_spread_dex.len())
         .map(|e| spots.iter().any(|s| s.emitter == e))
@@ -489,14 +490,24 @@ fn shifts(candidate: &Candidate, spots: &[Spot]) -> Vec<Vec<(f64, f64)>> {
     candidate
         .emitter_spread_dex
         .iter()
+        .zip(&candidate.emitter_shows)
         .zip(shown)
-        .map(|(sd, shown)| {
-            if several && shown && *sd > 0.0 {
-                let far = sd * 3f64.sqrt();
+        .map(|((sd, shows), shown)| {
+            if !shown {
+                return vec![(0.0, 1.0)];
+            }
+            let far = sd * 3f64.sqrt();
+            let mut nodes = if several && *sd > 0.0 {
                 vec![(-far, 1.0 / 6.0), (0.0, 2.0 / 3.0), (far, 1.0 / 6.0)]
             } else {
                 vec![(0.0, 1.0)]
+            };
+            let silent = 1.0 - shows / candidate.shows;
+            if silent >= 1e-3 {
+                nodes.iter_mut().for_each(|(_, w)| *w *= 1.0 - silent);
+                nodes.push((-12.0, silent));
             }
+            nodes
         })
         .collect()
 }
