@@ -23,8 +23,19 @@ pub struct Weighed {
     pub mode_ln: Vec<Lanes>,
     /// Lines of different members that blend.
     pub chains: usize,
+    /// How closely the amounts were integrated.
+    pub care: Care,
+}
+
+/// How closely the amounts of a composition were integrated.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
+pub enum Care {
     /// The newest member was added without moving the others.
-    pub rough: bool,
+    Added,
+    /// Product of profiles about the mode.
+    Profiles,
+    /// Pairs that compete for readings integrated jointly.
+    Pairs,
 }
 
 /// Members whose absence would matter less than this are not barred in turn.
@@ -52,7 +63,13 @@ pub fn ln_total(stock: &Stock, nodes: &[Lanes]) -> f64 {
 }
 
 /// Weighs a composition. `start` gives an amount node for each member to begin from.
-pub fn weigh(stock: &Stock, members: &[usize], start: &[Latent], barring: bool) -> Weighed {
+pub fn weigh(
+    stock: &Stock,
+    members: &[usize],
+    start: &[Latent],
+    barring: bool,
+    pairs: bool,
+) -> Weighed {
     let hopeless = barring && members.iter().any(|m| stock.prepared[*m].pairs.is_empty());
     if hopeless {
         let nodes = vec![[f64::NEG_INFINITY; LANES]; stock.scene.offset.len()];
@@ -63,7 +80,7 @@ pub fn weigh(stock: &Stock, members: &[usize], start: &[Latent], barring: bool) 
             nodes,
             mode: start.to_vec(),
             chains: 0,
-            rough: false,
+            care: Care::Pairs,
         };
     }
     if members.is_empty() {
@@ -76,7 +93,7 @@ pub fn weigh(stock: &Stock, members: &[usize], start: &[Latent], barring: bool) 
             nodes,
             mode: Vec::new(),
             chains: 0,
-            rough: false,
+            care: Care::Pairs,
         };
     }
     let assembly = Assembly::new(stock, members);
@@ -88,7 +105,7 @@ pub fn weigh(stock: &Stock, members: &[usize], start: &[Latent], barring: bool) 
             if barring && profile.bar_more() {
                 profile.climb();
             }
-            profile.product_at_best()
+            profile.product_at_best(pairs)
         }
         MixtureRule::Joint => profile.joint(barring),
     };
@@ -99,7 +116,11 @@ pub fn weigh(stock: &Stock, members: &[usize], start: &[Latent], barring: bool) 
         mode_ln: profile.ln_unbarred(),
         mode: profile.latents.clone(),
         chains: assembly.chains,
-        rough: false,
+        care: if pairs || members.len() == 1 {
+            Care::Pairs
+        } else {
+            Care::Profiles
+        },
     }
 }
 
@@ -137,7 +158,7 @@ pub fn weigh_added(
         mode_ln: Vec::new(),
         mode: start.to_vec(),
         chains: assembly.chains,
-        rough: true,
+        care: Care::Added,
     }
 }
 
@@ -165,6 +186,9 @@ struct Point {
     latents: Vec<Latent>,
     changed: Vec<Replaced>,
     totals: Totals,
+    /// The integrand in this very state.
+    plain: Slice,
+    /// The same, with emitter shifts integrated where that was done.
     slice: Slice,
 }
 
@@ -585,17 +609,28 @@ impl<'s, 'a> Profile<'s, 'a> {
     }
 
     fn point(&mut self, m: usize, amount: usize) -> Point {
-        let touched = self.by_member[m].clone();
+        self.point_at(&[(m, amount)])
+    }
+
+    /// The integrand with the amounts of some members changed.
+    fn point_at(&mut self, amounts: &[(usize, usize)]) -> Point {
         let mut latents = self.latents.clone();
-        latents[m].amount = amount;
+        let mut touched: Vec<usize> = Vec::new();
+        for (m, amount) in amounts {
+            latents[*m].amount = *amount;
+            touched.extend(&self.by_member[*m]);
+        }
+        touched.sort_unstable();
+        touched.dedup();
         let changed = self.replace(&latents, &touched, None);
         let totals = self.with_replaced(&self.totals, &changed, |s| &self.values[s]);
-        let slice = self.finish(&latents, &totals);
+        let plain = self.finish(&latents, &totals);
         Point {
             latents,
             changed,
             totals,
-            slice,
+            slice: plain.clone(),
+            plain,
         }
     }
 
@@ -702,7 +737,7 @@ impl<'s, 'a> Profile<'s, 'a> {
 
     /// Multiplies a slice by the integral over each emitter shift of its member.
     fn integrate_shifts(&mut self, m: usize, point: &mut Point) {
-        let base = point.slice.clone();
+        let base = point.plain.clone();
         let candidate = self.assembly.members[m];
         for e in 0..self.by_emitter[m].len() {
             let shift = self.stock.prepared[candidate].shifts[e].clone();
@@ -737,7 +772,7 @@ impl<'s, 'a> Profile<'s, 'a> {
     }
 
     /// The product approximation; moves to a better mode where integrating meets one.
-    fn product_at_best(&mut self) -> Vec<Lanes> {
+    fn product_at_best(&mut self, pairs: bool) -> Vec<Lanes> {
         const MOST_MOVES: usize = 3;
         for _ in 0..MOST_MOVES {
             let moves: Vec<bool> = (0..self.assembly.members.len())
@@ -748,7 +783,7 @@ impl<'s, 'a> Profile<'s, 'a> {
             }
             self.climb();
         }
-        self.product()
+        self.product(pairs)
     }
 
     /// Moves one member to the best of all its amounts, if that is better by more than a trifle.
@@ -769,15 +804,77 @@ impl<'s, 'a> Profile<'s, 'a> {
         true
     }
 
-    /// The product approximation about the mode, on all shift nodes.
-    fn product(&mut self) -> Vec<Lanes> {
+    /// The product approximation about the mode, with pairs that compete for readings integrated
+    /// jointly, on all shift nodes: L*(mode) · Π_s P_s · Π_(s,t) J_st/(P_s P_t).
+    fn product(&mut self, pairs: bool) -> Vec<Lanes> {
         let mode = self.present();
         let mut total = mode.clone();
-        for m in 0..self.assembly.members.len() {
-            let profile = self.member_profile(m, &mode);
-            add(&mut total, &profile);
+        let profiles: Vec<Slice> = (0..self.assembly.members.len())
+            .map(|m| self.member_profile(m, &mode))
+            .collect();
+        for profile in &profiles {
+            add(&mut total, profile);
+        }
+        if pairs {
+            for t in 1..profiles.len() {
+                for s in 0..t {
+                    if self.compete(s, t) {
+                        add(&mut total, &self.pair_profile(s, t, &mode));
+                        subtract(&mut total, &profiles[s]);
+                        subtract(&mut total, &profiles[t]);
+                    }
+                }
+            }
         }
         self.spread(total)
+    }
+
+    /// Whether two members have lines in one segment.
+    fn compete(&self, s: usize, t: usize) -> bool {
+        self.by_member[s]
+            .iter()
+            .any(|segment| self.by_member[t].contains(segment))
+    }
+
+    /// ln J_st = ln Σ_α Σ_α' w w'/(Z Z') · L*(α, α')/L*(mode), emitter shifts of both integrated.
+    fn pair_profile(&mut self, s: usize, t: usize, mode: &Slice) -> Slice {
+        let nodes_of = |points: Vec<(usize, Point)>| -> Vec<usize> {
+            points.into_iter().map(|(k, _)| k).collect()
+        };
+        let own = nodes_of(self.amounts(s));
+        let others = nodes_of(self.amounts(t));
+        let mut points = Vec::with_capacity(own.len() * others.len());
+        for k in own {
+            for other in &others {
+                points.push((k, *other, self.point_at(&[(s, k), (t, *other)])));
+            }
+        }
+        let best = points
+            .iter()
+            .map(|(_, _, p)| peak(&p.slice))
+            .fold(f64::NEG_INFINITY, f64::max);
+        let ln_z: f64 = [s, t]
+            .iter()
+            .map(|m| self.stock.prepared[self.assembly.members[*m]].detectability)
+            .map(|z| z.max(f64::MIN_POSITIVE).ln())
+            .sum();
+        let weights = self.stock.scene.amount.weights();
+        let mut sums = vec![[0.0; LANES]; mode.len()];
+        for (k, other, mut point) in points {
+            if point_counts(&point, best) {
+                self.integrate_shifts(s, &mut point);
+                self.integrate_shifts(t, &mut point);
+            }
+            let weight = weights[k] * weights[other];
+            for (sum, (lanes, at)) in sums.iter_mut().zip(point.slice.iter().zip(mode)) {
+                for l in 0..LANES {
+                    sum[l] += weight * (lanes[l] - at[l]).exp();
+                }
+            }
+        }
+        sums.into_iter()
+            .map(|sum| sum.map(|x| x.ln() - ln_z))
+            .collect()
     }
 
     /// The full joint grid, on all shift nodes.

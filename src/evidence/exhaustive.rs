@@ -60,7 +60,7 @@ pub fn exhaustive(
             .map(|set| {
                 let members = members_of(set);
                 let start: Vec<_> = members.iter().map(|c| middle(&stock, *c)).collect();
-                weigh(&stock, &members, &start, barring).ln_evidence
+                weigh(&stock, &members, &start, barring, barring).ln_evidence
             })
             .collect()
     };

@@ -6,7 +6,7 @@
 //! the more substances compete for the readings, the less another one adds.
 
 use super::assembly::{Latent, Stock};
-use super::composition::{Weighed, ln_total, middle, weigh, weigh_added};
+use super::composition::{Care, Weighed, ln_total, middle, weigh, weigh_added};
 use super::density::ln_sum_exp;
 use super::matching::LANES;
 use rayon::prelude::*;
@@ -30,6 +30,9 @@ const CHAIN_MARGIN_MOST: f64 = 1.0;
 const RELEVANT_LN: f64 = -8.0;
 /// Compositions estimated to lie this far below the best, in nats, keep the estimate.
 const ROUGH_LN: f64 = -9.0;
+/// Compositions this far below the best keep the product of profiles, which lines that blend can
+/// make too small by up to three nats.
+const PROFILES_LN: f64 = -7.0;
 /// Compositions evaluated per round, whatever the number of threads.
 const BATCH: usize = 4;
 
@@ -48,7 +51,7 @@ struct Node {
 pub fn search(stock: &Stock, ln_odds: &[f64]) -> Found {
     let singles: Vec<Weighed> = (0..stock.prepared.len())
         .into_par_iter()
-        .map(|c| weigh(stock, &[c], &[middle(stock, c)], true))
+        .map(|c| weigh(stock, &[c], &[middle(stock, c)], true, true))
         .collect();
     let mut order: Vec<(f64, usize)> = singles
         .iter()
@@ -88,7 +91,7 @@ struct Search<'s, 'a> {
 
 impl Search<'_, '_> {
     fn run(mut self) -> Found {
-        let empty = weigh(self.stock, &[], &[], true);
+        let empty = weigh(self.stock, &[], &[], true, true);
         let first: Vec<f64> = self.order.iter().map(|(gain, _)| *gain).collect();
         self.insert(Vec::new(), empty, first);
         let settings = self.stock.scene.settings;
@@ -154,13 +157,13 @@ impl Search<'_, '_> {
     fn evaluate(&mut self, open: &[(f64, usize, usize)]) {
         let batch: Vec<(usize, usize)> =
             open.iter().take(BATCH).map(|(_, n, t)| (*n, *t)).collect();
-        let rough: Vec<usize> = batch
+        let rough: Vec<(usize, Care)> = batch
             .iter()
-            .map(|(n, _)| *n)
-            .filter(|n| self.nodes[*n].weighed.rough)
+            .filter(|(n, _)| self.nodes[*n].weighed.care == Care::Added)
+            .map(|(n, _)| (*n, Care::Profiles))
             .collect();
         if !rough.is_empty() {
-            self.weigh_fully(rough);
+            self.weigh_again(rough);
             return;
         }
         let weighed: Vec<Weighed> = batch
@@ -192,32 +195,50 @@ impl Search<'_, '_> {
             .iter()
             .map(|n| n.ln_weight)
             .fold(f64::NEG_INFINITY, f64::max);
-        let mut rough: Vec<usize> = (0..self.nodes.len())
-            .filter(|n| self.nodes[*n].weighed.rough && self.nodes[*n].ln_weight > best + ROUGH_LN)
+        let wanted = |node: &Node| {
+            if node.ln_weight > best + PROFILES_LN {
+                Care::Pairs
+            } else if node.ln_weight > best + ROUGH_LN {
+                Care::Profiles
+            } else {
+                Care::Added
+            }
+        };
+        let mut due: Vec<(usize, Care)> = self
+            .nodes
+            .iter()
+            .map(wanted)
+            .enumerate()
+            .filter(|(n, care)| self.nodes[*n].weighed.care < *care)
             .collect();
-        rough.sort_by(|a, b| {
-            self.nodes[*b]
-                .ln_weight
-                .total_cmp(&self.nodes[*a].ln_weight)
-                .then(a.cmp(b))
+        due.sort_by(|(a, _), (b, _)| {
+            let (x, y) = (self.nodes[*a].ln_weight, self.nodes[*b].ln_weight);
+            y.total_cmp(&x).then(a.cmp(b))
         });
-        rough.truncate(BATCH);
-        let any = !rough.is_empty();
-        self.weigh_fully(rough);
+        due.truncate(BATCH);
+        // Until the leaders are known, profiles will do to find them.
+        let any = !due.is_empty();
+        self.weigh_again(due);
         any
     }
 
-    fn weigh_fully(&mut self, mut which: Vec<usize>) {
+    fn weigh_again(&mut self, mut which: Vec<(usize, Care)>) {
         which.sort_unstable();
         which.dedup();
         let weighed: Vec<Weighed> = which
             .par_iter()
-            .map(|n| {
-                let rough = &self.nodes[*n].weighed;
-                weigh(self.stock, &rough.members, &rough.mode, true)
+            .map(|(n, care)| {
+                let old = &self.nodes[*n].weighed;
+                weigh(
+                    self.stock,
+                    &old.members,
+                    &old.mode,
+                    true,
+                    *care == Care::Pairs,
+                )
             })
             .collect();
-        for (n, weighed) in which.into_iter().zip(weighed) {
+        for ((n, _), weighed) in which.into_iter().zip(weighed) {
             self.nodes[n].ln_weight = self.ln_weight(&self.nodes[n].places, &weighed);
             self.nodes[n].weighed = weighed;
             self.learn(n);
