@@ -34,8 +34,8 @@ pub enum Care {
     Added,
     /// Product of profiles about the mode.
     Profiles,
-    /// Pairs that compete for readings integrated jointly.
-    Pairs,
+    /// Amounts integrated jointly, where they are few enough.
+    Joint,
 }
 
 /// Members whose absence would matter less than this are not barred in turn.
@@ -68,7 +68,7 @@ pub fn weigh(
     members: &[usize],
     start: &[Latent],
     barring: bool,
-    pairs: bool,
+    joint: bool,
 ) -> Weighed {
     let hopeless = barring && members.iter().any(|m| stock.prepared[*m].pairs.is_empty());
     if hopeless {
@@ -80,7 +80,7 @@ pub fn weigh(
             nodes,
             mode: start.to_vec(),
             chains: 0,
-            care: Care::Pairs,
+            care: Care::Joint,
         };
     }
     if members.is_empty() {
@@ -93,7 +93,7 @@ pub fn weigh(
             nodes,
             mode: Vec::new(),
             chains: 0,
-            care: Care::Pairs,
+            care: Care::Joint,
         };
     }
     let assembly = Assembly::new(stock, members);
@@ -105,7 +105,7 @@ pub fn weigh(
             if barring && profile.bar_more() {
                 profile.climb();
             }
-            profile.product_at_best(pairs)
+            profile.product_at_best(joint)
         }
         MixtureRule::Joint => profile.joint(barring),
     };
@@ -116,8 +116,8 @@ pub fn weigh(
         mode_ln: profile.ln_unbarred(),
         mode: profile.latents.clone(),
         chains: assembly.chains,
-        care: if pairs || members.len() == 1 {
-            Care::Pairs
+        care: if joint || members.len() == 1 {
+            Care::Joint
         } else {
             Care::Profiles
         },
@@ -772,7 +772,7 @@ impl<'s, 'a> Profile<'s, 'a> {
     }
 
     /// The product approximation; moves to a better mode where integrating meets one.
-    fn product_at_best(&mut self, pairs: bool) -> Vec<Lanes> {
+    fn product_at_best(&mut self, joint: bool) -> Vec<Lanes> {
         const MOST_MOVES: usize = 3;
         for _ in 0..MOST_MOVES {
             let moves: Vec<bool> = (0..self.assembly.members.len())
@@ -783,7 +783,7 @@ impl<'s, 'a> Profile<'s, 'a> {
             }
             self.climb();
         }
-        self.product(pairs)
+        self.product(joint)
     }
 
     /// Moves one member to the best of all its amounts, if that is better by more than a trifle.
@@ -804,68 +804,63 @@ impl<'s, 'a> Profile<'s, 'a> {
         true
     }
 
-    /// The product approximation about the mode, with pairs that compete for readings integrated
-    /// jointly, on all shift nodes: L*(mode) · Π_s P_s · Π_(s,t) J_st/(P_s P_t).
-    fn product(&mut self, pairs: bool) -> Vec<Lanes> {
+    /// The product approximation L*(mode) · Π_s P_s on all shift nodes; where `joint` asks for it
+    /// and the amounts are few enough, the amounts are integrated jointly instead.
+    fn product(&mut self, joint: bool) -> Vec<Lanes> {
         let mode = self.present();
         let mut total = mode.clone();
-        let profiles: Vec<Slice> = (0..self.assembly.members.len())
-            .map(|m| self.member_profile(m, &mode))
-            .collect();
-        for profile in &profiles {
-            add(&mut total, profile);
-        }
-        if pairs {
-            for t in 1..profiles.len() {
-                for s in 0..t {
-                    if self.compete(s, t) {
-                        add(&mut total, &self.pair_profile(s, t, &mode));
-                        subtract(&mut total, &profiles[s]);
-                        subtract(&mut total, &profiles[t]);
-                    }
-                }
+        let states = if joint { self.joint_states() } else { None };
+        if let Some(states) = states {
+            add(&mut total, &self.joint_profile(&states, &mode));
+        } else {
+            for m in 0..self.assembly.members.len() {
+                add(&mut total, &self.member_profile(m, &mode));
             }
         }
         self.spread(total)
     }
 
-    /// Whether two members have lines in one segment.
-    fn compete(&self, s: usize, t: usize) -> bool {
-        self.by_member[s]
-            .iter()
-            .any(|segment| self.by_member[t].contains(segment))
+    /// Every combination of amounts that may count, if they are few enough to go through.
+    ///
+    /// One member needs none: its profile is joint already. All nodes are taken, not only those
+    /// near the mode: who owns a blend changes with the amounts, and so where the evidence lies.
+    fn joint_states(&self) -> Option<Vec<Vec<usize>>> {
+        const MOST_STATES: usize = 4096;
+        let members = self.assembly.members.len() as u32;
+        let count = self.stock.scene.amount.len();
+        let all = count.checked_pow(members)?;
+        if members < 2 || all > MOST_STATES {
+            return None;
+        }
+        Some(
+            (0..all)
+                .map(|state| (0..members).map(|m| state / count.pow(m) % count).collect())
+                .collect(),
+        )
     }
 
-    /// ln J_st = ln Σ_α Σ_α' w w'/(Z Z') · L*(α, α')/L*(mode), emitter shifts of both integrated.
-    fn pair_profile(&mut self, s: usize, t: usize, mode: &Slice) -> Slice {
-        let nodes_of = |points: Vec<(usize, Point)>| -> Vec<usize> {
-            points.into_iter().map(|(k, _)| k).collect()
-        };
-        let own = nodes_of(self.amounts(s));
-        let others = nodes_of(self.amounts(t));
-        let mut points = Vec::with_capacity(own.len() * others.len());
-        for k in own {
-            for other in &others {
-                points.push((k, *other, self.point_at(&[(s, k), (t, *other)])));
-            }
-        }
-        let best = points
+    /// ln Σ over states of Π w/Z · L*(state)/L*(mode), emitter shifts integrated.
+    fn joint_profile(&mut self, states: &[Vec<usize>], mode: &Slice) -> Slice {
+        let ln_z: f64 = self
+            .assembly
+            .members
             .iter()
-            .map(|(_, _, p)| peak(&p.slice))
-            .fold(f64::NEG_INFINITY, f64::max);
-        let ln_z: f64 = [s, t]
-            .iter()
-            .map(|m| self.stock.prepared[self.assembly.members[*m]].detectability)
+            .map(|c| self.stock.prepared[*c].detectability)
             .map(|z| z.max(f64::MIN_POSITIVE).ln())
             .sum();
         let weights = self.stock.scene.amount.weights();
         let mut sums = vec![[0.0; LANES]; mode.len()];
-        for (k, other, mut point) in points {
+        let mut best = peak(mode);
+        for amounts in states {
+            let changed: Vec<(usize, usize)> = amounts.iter().copied().enumerate().collect();
+            let mut point = self.point_at(&changed);
+            best = best.max(peak(&point.slice));
             if point_counts(&point, best) {
-                self.integrate_shifts(s, &mut point);
-                self.integrate_shifts(t, &mut point);
+                for m in 0..amounts.len() {
+                    self.integrate_shifts(m, &mut point);
+                }
             }
-            let weight = weights[k] * weights[other];
+            let weight: f64 = amounts.iter().map(|k| weights[*k]).product();
             for (sum, (lanes, at)) in sums.iter_mut().zip(point.slice.iter().zip(mode)) {
                 for l in 0..LANES {
                     sum[l] += weight * (lanes[l] - at[l]).exp();

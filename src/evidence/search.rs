@@ -33,6 +33,9 @@ const ROUGH_LN: f64 = -9.0;
 /// Compositions this far below the best keep the product of profiles, which lines that blend can
 /// make too small by up to three nats.
 const PROFILES_LN: f64 = -7.0;
+/// With fewer readings than this the amounts are so loosely known that adding a substance without
+/// moving the others says nothing.
+const CROWDED: usize = 16;
 /// Compositions evaluated per round, whatever the number of threads.
 const BATCH: usize = 4;
 
@@ -175,6 +178,9 @@ impl Search<'_, '_> {
                     return self.singles[newcomer].clone();
                 }
                 let (members, start) = self.start(base, newcomer);
+                if self.stock.scene.observations.len() < CROWDED {
+                    return weigh(self.stock, &members, &start, true, false);
+                }
                 let newest = members.binary_search(&newcomer).unwrap_or(0);
                 weigh_added(self.stock, base, &members, &start, newest)
             })
@@ -197,7 +203,7 @@ impl Search<'_, '_> {
             .fold(f64::NEG_INFINITY, f64::max);
         let wanted = |node: &Node| {
             if node.ln_weight > best + PROFILES_LN {
-                Care::Pairs
+                Care::Joint
             } else if node.ln_weight > best + ROUGH_LN {
                 Care::Profiles
             } else {
@@ -234,7 +240,7 @@ impl Search<'_, '_> {
                     &old.members,
                     &old.mode,
                     true,
-                    *care == Care::Pairs,
+                    *care == Care::Joint,
                 )
             })
             .collect();
