@@ -43,7 +43,7 @@ const CERTAIN: f64 = 1e-7;
 /// Most members barred in turn: 2^6 sets.
 const MOST_BARRED: usize = 6;
 /// Shift and amount nodes this far below the best, in ln, are left out.
-const NEGLIGIBLE_LN: f64 = -12.0;
+const NEGLIGIBLE_LN: f64 = -9.0;
 /// Before the amounts have settled, only shift nodes this far below are.
 const HOPELESS_LN: f64 = -30.0;
 /// Amount nodes this far below the best keep the emitter shifts of the mode.
@@ -825,7 +825,7 @@ impl<'s, 'a> Profile<'s, 'a> {
     /// One member needs none: its profile is joint already. All nodes are taken, not only those
     /// near the mode: who owns a blend changes with the amounts, and so where the evidence lies.
     fn joint_states(&self) -> Option<Vec<Vec<usize>>> {
-        const MOST_STATES: usize = 4096;
+        const MOST_STATES: usize = 1024;
         let members = self.assembly.members.len() as u32;
         let count = self.stock.scene.amount.len();
         let all = count.checked_pow(members)?;

@@ -33,9 +33,9 @@ const ROUGH_LN: f64 = -9.0;
 /// Compositions this far below the best keep the product of profiles, which lines that blend can
 /// make too small by up to three nats.
 const PROFILES_LN: f64 = -7.0;
-/// With fewer readings than this the amounts are so loosely known that adding a substance without
-/// moving the others says nothing.
-const CROWDED: usize = 16;
+/// Nats by which an estimate can be too low where new lines blend: who owns a blend changes with
+/// the amounts, which the estimate holds fixed.
+const BLEND_ALLOWANCE: f64 = 4.0;
 /// Compositions evaluated per round, whatever the number of threads.
 const BATCH: usize = 4;
 
@@ -169,21 +169,10 @@ impl Search<'_, '_> {
             self.weigh_again(rough);
             return;
         }
+        let worth = self.best() + ROUGH_LN;
         let weighed: Vec<Weighed> = batch
             .par_iter()
-            .map(|(n, t)| {
-                let base = &self.nodes[*n].weighed;
-                let newcomer = self.order[*t].1;
-                if base.members.is_empty() {
-                    return self.singles[newcomer].clone();
-                }
-                let (members, start) = self.start(base, newcomer);
-                if self.stock.scene.observations.len() < CROWDED {
-                    return weigh(self.stock, &members, &start, true, false);
-                }
-                let newest = members.binary_search(&newcomer).unwrap_or(0);
-                weigh_added(self.stock, base, &members, &start, newest)
-            })
+            .map(|(n, t)| self.child(*n, *t, worth))
             .collect();
         for ((n, t), weighed) in batch.into_iter().zip(weighed) {
             self.nodes[n].done[t] = true;
@@ -194,13 +183,40 @@ impl Search<'_, '_> {
         }
     }
 
-    /// Weighs estimated compositions that matter, best first; says whether there were any.
-    fn refine(&mut self) -> bool {
-        let best = self
-            .nodes
+    /// A node's composition with one more candidate: estimated, and weighed where the estimate
+    /// may hide a weight above `worth`.
+    fn child(&self, node: usize, place: usize, worth: f64) -> Weighed {
+        let base = &self.nodes[node].weighed;
+        let newcomer = self.order[place].1;
+        if base.members.is_empty() {
+            return self.singles[newcomer].clone();
+        }
+        let (members, start) = self.start(base, newcomer);
+        let newest = members.binary_search(&newcomer).unwrap_or(0);
+        let estimate = weigh_added(self.stock, base, &members, &start, newest);
+        let mut places = self.nodes[node].places.clone();
+        places.push(place);
+        let ln_weight = self.ln_weight(&places, &estimate);
+        let blends = estimate.chains > base.chains;
+        let hides = ln_weight == f64::NEG_INFINITY || ln_weight + BLEND_ALLOWANCE > worth;
+        if blends && hides {
+            weigh(self.stock, &members, &start, true, false)
+        } else {
+            estimate
+        }
+    }
+
+    /// ln weight of the best composition so far.
+    fn best(&self) -> f64 {
+        self.nodes
             .iter()
             .map(|n| n.ln_weight)
-            .fold(f64::NEG_INFINITY, f64::max);
+            .fold(f64::NEG_INFINITY, f64::max)
+    }
+
+    /// Weighs estimated compositions that matter, best first; says whether there were any.
+    fn refine(&mut self) -> bool {
+        let best = self.best();
         let wanted = |node: &Node| {
             if node.ln_weight > best + PROFILES_LN {
                 Care::Joint
