@@ -5,7 +5,7 @@ use super::assembly::{Assembly, Latent, Stock, Workspace};
 use super::density::ln_sum_exp;
 use super::matching::{LANES, Lanes};
 use super::settings::MixtureRule;
-use std::collections::HashMap;
+use std::collections::{BTreeSet, HashMap};
 use std::rc::Rc;
 
 /// A composition with its evidence.
@@ -809,9 +809,8 @@ impl<'s, 'a> Profile<'s, 'a> {
     fn product(&mut self, joint: bool) -> Vec<Lanes> {
         let mode = self.present();
         let mut total = mode.clone();
-        let states = if joint { self.joint_states() } else { None };
-        if let Some(states) = states {
-            add(&mut total, &self.joint_profile(&states, &mode));
+        if joint && self.joint_affordable() {
+            add(&mut total, &self.joint_profile(&mode));
         } else {
             for m in 0..self.assembly.members.len() {
                 add(&mut total, &self.member_profile(m, &mode));
@@ -820,27 +819,40 @@ impl<'s, 'a> Profile<'s, 'a> {
         self.spread(total)
     }
 
-    /// Every combination of amounts that may count, if they are few enough to go through.
-    ///
-    /// One member needs none: its profile is joint already. All nodes are taken, not only those
-    /// near the mode: who owns a blend changes with the amounts, and so where the evidence lies.
-    fn joint_states(&self) -> Option<Vec<Vec<usize>>> {
+    /// Whether the amounts are few enough to integrate jointly. One member needs none of it: its
+    /// profile is joint already.
+    fn joint_affordable(&self) -> bool {
         const MOST_STATES: usize = 1024;
-        let members = self.assembly.members.len() as u32;
-        let count = self.stock.scene.amount.len();
-        let all = count.checked_pow(members)?;
-        if members < 2 || all > MOST_STATES {
-            return None;
-        }
-        Some(
-            (0..all)
-                .map(|state| (0..members).map(|m| state / count.pow(m) % count).collect())
-                .collect(),
-        )
+        let members = self.assembly.members.len();
+        let all = self.stock.scene.amount.len().checked_pow(members as u32);
+        members > 1 && all.is_some_and(|all| all <= MOST_STATES)
     }
 
-    /// ln Σ over states of Π w/Z · L*(state)/L*(mode), emitter shifts integrated.
-    fn joint_profile(&mut self, states: &[Vec<usize>], mode: &Slice) -> Slice {
+    /// The combinations of amounts that count: outwards from the mode, as far as the integrand
+    /// has not fallen too far.
+    fn joint_points(&mut self) -> Vec<(Vec<usize>, Point)> {
+        let count = self.stock.scene.amount.len();
+        let mode: Vec<usize> = self.latents.iter().map(|l| l.amount).collect();
+        let mut met: BTreeSet<Vec<usize>> = BTreeSet::from([mode.clone()]);
+        let mut open = vec![mode];
+        let mut points = Vec::new();
+        let mut best = f64::NEG_INFINITY;
+        while let Some(amounts) = open.pop() {
+            let changed: Vec<(usize, usize)> = amounts.iter().copied().enumerate().collect();
+            let point = self.point_at(&changed);
+            let value = self.ln_weighted(&point.slice);
+            best = best.max(value);
+            if value > best + NEGLIGIBLE_LN {
+                open.extend(neighbours(&amounts, count).filter(|n| met.insert(n.clone())));
+            }
+            points.push((amounts, point));
+        }
+        points.sort_by(|a, b| a.0.cmp(&b.0));
+        points
+    }
+
+    /// ln Σ over amounts of Π w/Z · L*(amounts)/L*(mode), emitter shifts integrated.
+    fn joint_profile(&mut self, mode: &Slice) -> Slice {
         let ln_z: f64 = self
             .assembly
             .members
@@ -850,11 +862,12 @@ impl<'s, 'a> Profile<'s, 'a> {
             .sum();
         let weights = self.stock.scene.amount.weights();
         let mut sums = vec![[0.0; LANES]; mode.len()];
-        let mut best = peak(mode);
-        for amounts in states {
-            let changed: Vec<(usize, usize)> = amounts.iter().copied().enumerate().collect();
-            let mut point = self.point_at(&changed);
-            best = best.max(peak(&point.slice));
+        let points = self.joint_points();
+        let best = points
+            .iter()
+            .map(|(_, p)| peak(&p.slice))
+            .fold(f64::NEG_INFINITY, f64::max);
+        for (amounts, mut point) in points {
             if point_counts(&point, best) {
                 for m in 0..amounts.len() {
                     self.integrate_shifts(m, &mut point);
@@ -1036,6 +1049,18 @@ fn grid(stock: &Stock, prepared: &super::prepare::Prepared) -> Vec<(Latent, f64)
 /// Whether a point carries enough of its profile to integrate its emitter shifts.
 fn point_counts(point: &Point, best: f64) -> bool {
     peak(&point.slice) > best + MINOR_LN
+}
+
+/// Amount nodes one step away in one member.
+fn neighbours(amounts: &[usize], count: usize) -> impl Iterator<Item = Vec<usize>> {
+    (0..amounts.len())
+        .flat_map(|m| [(m, -1isize), (m, 1)])
+        .filter_map(move |(m, step)| {
+            let next = amounts[m].checked_add_signed(step).filter(|k| *k < count)?;
+            let mut amounts = amounts.to_vec();
+            amounts[m] = next;
+            Some(amounts)
+        })
 }
 
 fn value_in(changed: &[Replaced], segment: usize) -> Option<&Value> {
