@@ -4,6 +4,7 @@
 use super::assembly::{Assembly, Latent, Stock, Workspace};
 use super::density::ln_sum_exp;
 use super::matching::{LANES, Lanes};
+use super::quadrature::Quadrature;
 use super::settings::MixtureRule;
 use std::collections::{BTreeSet, HashMap};
 use std::rc::Rc;
@@ -46,8 +47,8 @@ const MOST_BARRED: usize = 6;
 const NEGLIGIBLE_LN: f64 = -9.0;
 /// Before the amounts have settled, only shift nodes this far below are.
 const HOPELESS_LN: f64 = -30.0;
-/// Amount nodes this far below the best keep the emitter shifts of the mode.
-const MINOR_LN: f64 = -8.0;
+/// Amount nodes this far below the best take the integral over emitter shifts from their neighbours.
+const MINOR_LN: f64 = -3.5;
 /// A better amount met while integrating, in nats, is worth climbing to.
 const BETTER_LN: f64 = 0.05;
 
@@ -186,9 +187,6 @@ struct Point {
     latents: Vec<Latent>,
     changed: Vec<Replaced>,
     totals: Totals,
-    /// The integrand in this very state.
-    plain: Slice,
-    /// The same, with emitter shifts integrated where that was done.
     slice: Slice,
 }
 
@@ -624,13 +622,12 @@ impl<'s, 'a> Profile<'s, 'a> {
         touched.dedup();
         let changed = self.replace(&latents, &touched, None);
         let totals = self.with_replaced(&self.totals, &changed, |s| &self.values[s]);
-        let plain = self.finish(&latents, &totals);
+        let slice = self.finish(&latents, &totals);
         Point {
             latents,
             changed,
             totals,
-            slice: plain.clone(),
-            plain,
+            slice,
         }
     }
 
@@ -708,25 +705,45 @@ impl<'s, 'a> Profile<'s, 'a> {
 
     /// ln of the profile of one member: Σ_α w/Z · L*(α)/L*(mode) · Π_e Σ_β w · L*(α, β_e)/L*(α).
     fn member_profile(&mut self, m: usize, mode: &Slice) -> Slice {
-        let candidate = self.assembly.members[m];
-        let ln_z = self.stock.prepared[candidate]
-            .detectability
-            .max(f64::MIN_POSITIVE)
-            .ln();
-        let points = self.amounts(m);
-        let peak = points
+        let points = self
+            .amounts(m)
+            .into_iter()
+            .map(|(k, point)| (vec![k], point))
+            .collect();
+        self.integral(&[m], points, mode)
+    }
+
+    /// ln Σ over amounts of Π w/Z · L*(amounts)/L*(mode), the emitter shifts of `members`
+    /// integrated.
+    fn integral(
+        &mut self,
+        members: &[usize],
+        points: Vec<(Vec<usize>, Point)>,
+        mode: &Slice,
+    ) -> Slice {
+        let ln_z: f64 = members
+            .iter()
+            .map(|m| self.stock.prepared[self.assembly.members[*m]].detectability)
+            .map(|z| z.max(f64::MIN_POSITIVE).ln())
+            .sum();
+        let best = points
             .iter()
             .map(|(_, p)| peak(&p.slice))
             .fold(f64::NEG_INFINITY, f64::max);
+        let factors: Vec<Option<Slice>> = points
+            .iter()
+            .map(|(_, p)| (peak(&p.slice) > best + MINOR_LN).then(|| self.shift_factor(members, p)))
+            .collect();
+        let weights = self.stock.scene.amount.weights();
         let mut sums = vec![[0.0; LANES]; mode.len()];
-        for (k, mut point) in points {
-            if point_counts(&point, peak) {
-                self.integrate_shifts(m, &mut point);
-            }
-            let weight = self.stock.scene.amount.weights()[k];
-            for (sum, (lanes, at)) in sums.iter_mut().zip(point.slice.iter().zip(mode)) {
+        for (amounts, point) in &points {
+            let Some(factor) = nearest(&points, &factors, amounts) else {
+                continue;
+            };
+            let weight: f64 = amounts.iter().map(|k| weights[*k]).product();
+            for (d, sum) in sums.iter_mut().enumerate() {
                 for l in 0..LANES {
-                    sum[l] += weight * (lanes[l] - at[l]).exp();
+                    sum[l] += weight * (point.slice[d][l] + factor[d][l] - mode[d][l]).exp();
                 }
             }
         }
@@ -735,40 +752,48 @@ impl<'s, 'a> Profile<'s, 'a> {
             .collect()
     }
 
-    /// Multiplies a slice by the integral over each emitter shift of its member.
-    fn integrate_shifts(&mut self, m: usize, point: &mut Point) {
-        let base = point.plain.clone();
-        let candidate = self.assembly.members[m];
-        for e in 0..self.by_emitter[m].len() {
-            let shift = self.stock.prepared[candidate].shifts[e].clone();
-            if shift.len() == 1 {
-                continue;
-            }
-            let touched = self.by_emitter[m][e].clone();
-            let mut mean = vec![[0.0; LANES]; base.len()];
-            for (b, weight) in shift.weights().iter().enumerate() {
-                let mut other = point.latents.clone();
-                other[m].shifts[e] = b;
-                let own = self.replace(&other, &touched, None);
-                let changed = &point.changed;
-                let totals = self.with_replaced(&point.totals, &own, |s| {
-                    value_in(changed, s).unwrap_or(&self.values[s])
-                });
-                let option = self.finish(&other, &totals);
-                for (sum, (o, at)) in mean.iter_mut().zip(option.iter().zip(&base)) {
-                    for l in 0..LANES {
-                        sum[l] += weight * (o[l] - at[l]).exp();
-                    }
+    /// ln Π_e Σ_β w · L*(β_e)/L* over the emitters of the given members, at one point.
+    fn shift_factor(&mut self, members: &[usize], point: &Point) -> Slice {
+        let mut factor = vec![[0.0; LANES]; point.slice.len()];
+        for m in members {
+            for e in 0..self.by_emitter[*m].len() {
+                let candidate = self.assembly.members[*m];
+                let shift = self.stock.prepared[candidate].shifts[e].clone();
+                if shift.len() == 1 {
+                    continue;
                 }
-            }
-            for (to, factor) in point.slice.iter_mut().zip(mean) {
-                for l in 0..LANES {
-                    if factor[l].is_finite() && factor[l] > 0.0 {
-                        to[l] += factor[l].ln();
+                let mean = self.shift_mean(*m, e, &shift, point);
+                for (to, mean) in factor.iter_mut().zip(mean) {
+                    for l in 0..LANES {
+                        if mean[l].is_finite() && mean[l] > 0.0 {
+                            to[l] += mean[l].ln();
+                        }
                     }
                 }
             }
         }
+        factor
+    }
+
+    /// Σ_β w · L*(β)/L* over the shift of one emitter, at one point.
+    fn shift_mean(&mut self, m: usize, e: usize, shift: &Quadrature, point: &Point) -> Slice {
+        let touched = self.by_emitter[m][e].clone();
+        let mut mean = vec![[0.0; LANES]; point.slice.len()];
+        for (b, weight) in shift.weights().iter().enumerate() {
+            let mut other = point.latents.clone();
+            other[m].shifts[e] = b;
+            let own = self.replace(&other, &touched, None);
+            let totals = self.with_replaced(&point.totals, &own, |s| {
+                value_in(&point.changed, s).unwrap_or(&self.values[s])
+            });
+            let option = self.finish(&other, &totals);
+            for (sum, (o, at)) in mean.iter_mut().zip(option.iter().zip(&point.slice)) {
+                for l in 0..LANES {
+                    sum[l] += weight * (o[l] - at[l]).exp();
+                }
+            }
+        }
+        mean
     }
 
     /// The product approximation; moves to a better mode where integrating meets one.
@@ -810,7 +835,9 @@ impl<'s, 'a> Profile<'s, 'a> {
         let mode = self.present();
         let mut total = mode.clone();
         if joint && self.joint_affordable() {
-            add(&mut total, &self.joint_profile(&mode));
+            let members: Vec<usize> = (0..self.assembly.members.len()).collect();
+            let points = self.joint_points();
+            add(&mut total, &self.integral(&members, points, &mode));
         } else {
             for m in 0..self.assembly.members.len() {
                 add(&mut total, &self.member_profile(m, &mode));
@@ -849,40 +876,6 @@ impl<'s, 'a> Profile<'s, 'a> {
         }
         points.sort_by(|a, b| a.0.cmp(&b.0));
         points
-    }
-
-    /// ln Σ over amounts of Π w/Z · L*(amounts)/L*(mode), emitter shifts integrated.
-    fn joint_profile(&mut self, mode: &Slice) -> Slice {
-        let ln_z: f64 = self
-            .assembly
-            .members
-            .iter()
-            .map(|c| self.stock.prepared[*c].detectability)
-            .map(|z| z.max(f64::MIN_POSITIVE).ln())
-            .sum();
-        let weights = self.stock.scene.amount.weights();
-        let mut sums = vec![[0.0; LANES]; mode.len()];
-        let points = self.joint_points();
-        let best = points
-            .iter()
-            .map(|(_, p)| peak(&p.slice))
-            .fold(f64::NEG_INFINITY, f64::max);
-        for (amounts, mut point) in points {
-            if point_counts(&point, best) {
-                for m in 0..amounts.len() {
-                    self.integrate_shifts(m, &mut point);
-                }
-            }
-            let weight: f64 = amounts.iter().map(|k| weights[*k]).product();
-            for (sum, (lanes, at)) in sums.iter_mut().zip(point.slice.iter().zip(mode)) {
-                for l in 0..LANES {
-                    sum[l] += weight * (lanes[l] - at[l]).exp();
-                }
-            }
-        }
-        sums.into_iter()
-            .map(|sum| sum.map(|x| x.ln() - ln_z))
-            .collect()
     }
 
     /// The full joint grid, on all shift nodes.
@@ -1046,9 +1039,21 @@ fn grid(stock: &Stock, prepared: &super::prepare::Prepared) -> Vec<(Latent, f64)
     states
 }
 
-/// Whether a point carries enough of its profile to integrate its emitter shifts.
-fn point_counts(point: &Point, best: f64) -> bool {
-    peak(&point.slice) > best + MINOR_LN
+/// The factor of the nearest point that has one.
+fn nearest<'f>(
+    points: &[(Vec<usize>, Point)],
+    factors: &'f [Option<Slice>],
+    amounts: &[usize],
+) -> Option<&'f Slice> {
+    let distance = |other: &[usize]| -> usize {
+        other.iter().zip(amounts).map(|(a, b)| a.abs_diff(*b)).sum()
+    };
+    points
+        .iter()
+        .zip(factors)
+        .filter_map(|((other, _), factor)| factor.as_ref().map(|f| (distance(other), f)))
+        .min_by_key(|(distance, _)| *distance)
+        .map(|(_, factor)| factor)
 }
 
 /// Amount nodes one step away in one member.
