@@ -51,7 +51,7 @@ pub struct Conditions {
     /// Standard uncertainty of a stretch common to all readings.
     pub scale_relative: f64,
     /// Pairs of readings told apart although closer than `resolution_nm`: near them the merge
-    /// width is their distance.
+    /// width is half their distance.
     pub splits_nm: Vec<[f64; 2]>,
 }
 

@@ -173,13 +173,16 @@ impl<'a> Scene<'a> {
     }
 
     /// The merge width at a position: the resolution, or less beside readings told apart there.
+    /// Their distance is uncertain, and the lines they show may lie closer than they do.
     pub fn merge_width(&self, wavelength_nm: f64) -> f64 {
+        /// Lines further apart than this share of the distance between two readings are two.
+        const SPLIT_SHARE: f64 = 0.5;
         let width = self.conditions.resolution_nm;
         self.conditions
             .splits_nm
             .iter()
             .filter(|[a, b]| (a - width..=b + width).contains(&wavelength_nm))
-            .map(|[a, b]| (b - a).abs() * 0.999)
+            .map(|[a, b]| (b - a).abs() * SPLIT_SHARE)
             .fold(width, f64::min)
     }
 }
