@@ -1045,9 +1045,8 @@ fn nearest<'f>(
     factors: &'f [Option<Slice>],
     amounts: &[usize],
 ) -> Option<&'f Slice> {
-    let distance = |other: &[usize]| -> usize {
-        other.iter().zip(amounts).map(|(a, b)| a.abs_diff(*b)).sum()
-    };
+    let distance =
+        |other: &[usize]| -> usize { other.iter().zip(amounts).map(|(a, b)| a.abs_diff(*b)).sum() };
     points
         .iter()
         .zip(factors)
