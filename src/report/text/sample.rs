@@ -211,7 +211,8 @@ fn reading_row(reading: &ReadingView) -> Vec<Cell> {
     let row = match reading.rows.as_slice() {
         [] => UNKNOWN.to_owned(),
         [row] => row.to_string(),
-        [row, others @ ..] => format!("{row} and {}", others.len()),
+        [row, other] => format!("{row}, {other}"),
+        [row, others @ ..] => format!("{row} +{}", others.len()),
     };
     let position = match (reading.wavelength_nm, reading.uncertainty_nm) {
         (Some(nm), Some(u)) => wavelength_with_uncertainty(nm, u),
