@@ -1,8 +1,7 @@
 //! Every threshold between evidence and words, each with its reason.
 
-/// A leader (or its either/or group) from here on may be called decisive. Claims above .95 were
-/// right 97.8-100 % of the time in simulation; .90 leaves room for a ubiquitous trace that is
-/// half seen.
+/// A leader (or its either/or group) from here on may be called decisive: one error in ten at the
+/// most is what a class can live with, and it leaves room for a ubiquitous trace that is half seen.
 pub const DECISIVE_POSTERIOR: f64 = 0.90;
 
 /// Probability mass of compositions not weighed that a decisive answer may leave open: a tenth of
@@ -16,8 +15,7 @@ pub const EXPLAINED_BELOW: f64 = 0.2;
 /// A reading is unexplained above this.
 pub const UNEXPLAINED_ABOVE: f64 = 0.8;
 
-/// So many unexplained readings speak of a substance that is not listed. One is often clutter;
-/// two flagged 93-95 % of the simulated cases in which the truth was not in the library.
+/// So many unexplained readings speak of a substance that is not listed. One is often clutter.
 pub const UNLISTED_READINGS: usize = 2;
 
 /// Below this chance of showing at least one feature a substance cannot be tested here: its
