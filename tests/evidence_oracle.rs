@@ -194,14 +194,13 @@ const PLAIN_PAIR: Recipe = Recipe {
     offsets: 5,
 };
 
-/// What the design asks of the 95th percentile, nats.
+/// What may be lost at the 95th percentile, nats, with and without lines that blend.
 const PAIR_P95: f64 = 0.10;
-/// See above.
+/// See above, where no lines blend.
 const TRIPLE_P95: f64 = 0.18;
-/// What is measured where lines of different members blend (the product then takes too little, by
-/// up to 3 nats); the design asks the two limits above. To be lowered to them when such pairs are
-/// integrated jointly.
-const BLENDED_P95: f64 = 1.3;
+/// See above, where lines of three members blend and the amounts that count are too many to be
+/// integrated jointly now and then.
+const BLENDED_TRIPLE_P95: f64 = 0.30;
 
 #[test]
 fn product_of_profiles_is_near_the_joint_grid_for_pairs() {
@@ -214,7 +213,7 @@ fn product_of_profiles_is_near_the_joint_grid_for_pairs() {
         let [apart, blended] = product_errors(2000..2500, &recipe);
         assert!(p95_of(name, &apart) <= PAIR_P95, "{name}");
         assert!(
-            p95_of(&format!("{name}, blended"), &blended) <= BLENDED_P95,
+            p95_of(&format!("{name}, blended"), &blended) <= PAIR_P95,
             "{name}, blended"
         );
     }
@@ -226,7 +225,8 @@ fn product_of_profiles_is_near_the_joint_grid_for_triples() {
         substances: 3,
         most_features: 3,
         most_readings: 6,
-        amounts: 8,
+        // More states than are integrated jointly.
+        amounts: 11,
         offsets: 2,
         oddities: 0.0,
         crowding: 0.1,
@@ -234,7 +234,7 @@ fn product_of_profiles_is_near_the_joint_grid_for_triples() {
     };
     let [apart, blended] = product_errors(4000..4650, &three);
     assert!(p95_of("triples", &apart) <= TRIPLE_P95);
-    assert!(p95_of("triples, blended", &blended) <= BLENDED_P95);
+    assert!(p95_of("triples, blended", &blended) <= BLENDED_TRIPLE_P95);
 }
 
 #[test]

@@ -45,6 +45,8 @@ const CERTAIN: f64 = 1e-7;
 const MOST_BARRED: usize = 6;
 /// Shift and amount nodes this far below the best, in ln, are left out.
 const NEGLIGIBLE_LN: f64 = -9.0;
+/// Amounts of several members together this far below the best are left out.
+const JOINT_LN: f64 = -7.0;
 /// Before the amounts have settled, only shift nodes this far below are.
 const HOPELESS_LN: f64 = -30.0;
 /// Amount nodes this far below the best take the integral over emitter shifts from their neighbours.
@@ -834,9 +836,15 @@ impl<'s, 'a> Profile<'s, 'a> {
     fn product(&mut self, joint: bool) -> Vec<Lanes> {
         let mode = self.present();
         let mut total = mode.clone();
-        if joint && self.joint_affordable() {
+        // The profile of one member is joint already; of many whose lines stand apart it is exact.
+        let entangled = match self.assembly.members.len() {
+            0 | 1 => false,
+            2 => true,
+            _ => self.assembly.chains > 0,
+        };
+        let points = (joint && entangled).then(|| self.joint_points()).flatten();
+        if let Some(points) = points {
             let members: Vec<usize> = (0..self.assembly.members.len()).collect();
-            let points = self.joint_points();
             add(&mut total, &self.integral(&members, points, &mode));
         } else {
             for m in 0..self.assembly.members.len() {
@@ -846,18 +854,10 @@ impl<'s, 'a> Profile<'s, 'a> {
         self.spread(total)
     }
 
-    /// Whether the amounts are few enough to integrate jointly. One member needs none of it: its
-    /// profile is joint already.
-    fn joint_affordable(&self) -> bool {
-        const MOST_STATES: usize = 1024;
-        let members = self.assembly.members.len();
-        let all = self.stock.scene.amount.len().checked_pow(members as u32);
-        members > 1 && all.is_some_and(|all| all <= MOST_STATES)
-    }
-
     /// The combinations of amounts that count: outwards from the mode, as far as the integrand
-    /// has not fallen too far.
-    fn joint_points(&mut self) -> Vec<(Vec<usize>, Point)> {
+    /// has not fallen too far. None where they are too many.
+    fn joint_points(&mut self) -> Option<Vec<(Vec<usize>, Point)>> {
+        const MOST_POINTS: usize = 1024;
         let count = self.stock.scene.amount.len();
         let mode: Vec<usize> = self.latents.iter().map(|l| l.amount).collect();
         let mut met: BTreeSet<Vec<usize>> = BTreeSet::from([mode.clone()]);
@@ -869,13 +869,16 @@ impl<'s, 'a> Profile<'s, 'a> {
             let point = self.point_at(&changed);
             let value = self.ln_weighted(&point.slice);
             best = best.max(value);
-            if value > best + NEGLIGIBLE_LN {
+            if value > best + JOINT_LN {
                 open.extend(neighbours(&amounts, count).filter(|n| met.insert(n.clone())));
             }
             points.push((amounts, point));
+            if points.len() > MOST_POINTS {
+                return None;
+            }
         }
         points.sort_by(|a, b| a.0.cmp(&b.0));
-        points
+        Some(points)
     }
 
     /// The full joint grid, on all shift nodes.
