@@ -146,6 +146,7 @@ pub fn weigh_added(
     profile.doubtful = vec![newest];
     profile.place_bars();
     profile.refresh();
+    profile.jump(newest);
     let mode: Slice = profile.shifts.iter().map(|d| base.mode_ln[*d]).collect();
     let mut added = profile.member_profile(newest, &mode);
     for (lanes, d) in added.iter_mut().zip(&profile.shifts) {
@@ -158,8 +159,8 @@ pub fn weigh_added(
         members: members.to_vec(),
         ln_evidence: ln_total(stock, &nodes),
         nodes,
-        mode_ln: Vec::new(),
-        mode: start.to_vec(),
+        mode_ln: profile.ln_unbarred(),
+        mode: profile.latents.clone(),
         chains: assembly.chains,
         care: Care::Added,
     }

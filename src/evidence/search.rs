@@ -36,18 +36,47 @@ const PROFILES_LN: f64 = -7.0;
 /// Nats by which an estimate can be too low where new lines blend: who owns a blend changes with
 /// the amounts, which the estimate holds fixed.
 const BLEND_ALLOWANCE: f64 = 4.0;
+/// Compositions estimated to lie this far below the best serve as a base for estimates as they are.
+const FAR_BEHIND_LN: f64 = -9.0;
 /// Compositions evaluated per round, whatever the number of threads.
-const BATCH: usize = 4;
+const BATCH: usize = 8;
 
 struct Node {
     /// Positions in `Search::order`, ascending.
     places: Vec<usize>,
     weighed: Weighed,
     ln_weight: f64,
+    /// What the weight may turn out to be; the weight itself unless it was only estimated.
+    ln_hope: f64,
     /// Bound on ln of the factor that adding each candidate can bring.
     gain: Vec<f64>,
     /// Whether the child by each candidate has been evaluated.
     done: Vec<bool>,
+}
+
+impl Node {
+    /// An estimate that found nothing, although blends may hide something.
+    fn is_hidden(&self) -> bool {
+        self.ln_weight == f64::NEG_INFINITY && self.ln_hope > self.ln_weight
+    }
+
+    /// ln weight to count on.
+    fn expected(&self) -> f64 {
+        if self.is_hidden() {
+            self.ln_hope
+        } else {
+            self.ln_weight
+        }
+    }
+}
+
+/// How much more than its estimate a composition may weigh.
+#[derive(Debug, Clone, Copy)]
+enum Hope {
+    /// So many nats above the estimate.
+    Above(f64),
+    /// So much in all.
+    AtMost(f64),
 }
 
 /// Searches all compositions of the candidates.
@@ -96,14 +125,16 @@ impl Search<'_, '_> {
     fn run(mut self) -> Found {
         let empty = weigh(self.stock, &[], &[], true, true);
         let first: Vec<f64> = self.order.iter().map(|(gain, _)| *gain).collect();
-        self.insert(Vec::new(), empty, first);
+        self.insert(Vec::new(), empty, first, Hope::Above(0.0));
         let settings = self.stock.scene.settings;
         let mut bound = f64::INFINITY;
         while self.nodes.len() < settings.search_limit {
-            if self.refine() {
+            let open = self.open_children();
+            // While something better may turn up, care for what has been found would be wasted.
+            let settled = open.first().is_none_or(|o| o.0 <= self.best());
+            if settled && self.refine() {
                 continue;
             }
-            let open = self.open_children();
             bound = self.bound(&open);
             if bound < settings.search_tolerance {
                 break;
@@ -133,7 +164,8 @@ impl Search<'_, '_> {
     fn open_children(&self) -> Vec<(f64, usize, usize)> {
         let mut open = Vec::new();
         for (n, node) in self.nodes.iter().enumerate() {
-            if node.ln_weight == f64::NEG_INFINITY {
+            let start = node.expected();
+            if start == f64::NEG_INFINITY {
                 continue;
             }
             let mut below = 0.0;
@@ -141,7 +173,7 @@ impl Search<'_, '_> {
             for t in (first..self.order.len()).rev() {
                 let gain = node.gain[t];
                 if !node.done[t] {
-                    open.push((node.ln_weight + gain + below, n, t));
+                    open.push((start + gain + below, n, t));
                 }
                 below += gain.exp().ln_1p().max(if gain > 30.0 { gain } else { 0.0 });
             }
@@ -156,36 +188,46 @@ impl Search<'_, '_> {
         (ln_sum_exp(&left) - ln_sum_exp(&have)).exp()
     }
 
-    /// Estimates the best open children; a node that was only estimated is weighed first.
+    /// Estimates the best open children; a node that was only estimated is weighed first if it is
+    /// not far behind.
     fn evaluate(&mut self, open: &[(f64, usize, usize)]) {
         let batch: Vec<(usize, usize)> =
             open.iter().take(BATCH).map(|(_, n, t)| (*n, *t)).collect();
+        let best = self.best();
         let rough: Vec<(usize, Care)> = batch
             .iter()
-            .filter(|(n, _)| self.nodes[*n].weighed.care == Care::Added)
+            .filter(|(n, _)| {
+                let node = &self.nodes[*n];
+                node.weighed.care == Care::Added
+                    && (node.is_hidden() || node.ln_hope > best + FAR_BEHIND_LN)
+            })
             .map(|(n, _)| (*n, Care::Profiles))
             .collect();
         if !rough.is_empty() {
             self.weigh_again(rough);
             return;
         }
-        let worth = self.best() + ROUGH_LN;
-        let weighed: Vec<Weighed> = batch
-            .par_iter()
-            .map(|(n, t)| self.child(*n, *t, worth))
-            .collect();
+        let weighed: Vec<Weighed> = batch.par_iter().map(|(n, t)| self.child(*n, *t)).collect();
         for ((n, t), weighed) in batch.into_iter().zip(weighed) {
-            self.nodes[n].done[t] = true;
-            let mut places = self.nodes[n].places.clone();
+            let parent = &mut self.nodes[n];
+            parent.done[t] = true;
+            let mut places = parent.places.clone();
             places.push(t);
-            let gain = self.nodes[n].gain.clone();
-            self.insert(places, weighed, gain);
+            let blends = weighed.chains > parent.weighed.chains;
+            let hope = match (weighed.care, blends) {
+                (Care::Added, true) if weighed.ln_evidence == f64::NEG_INFINITY => {
+                    Hope::AtMost(parent.ln_weight + parent.gain[t])
+                }
+                (Care::Added, true) => Hope::Above(BLEND_ALLOWANCE),
+                _ => Hope::Above(0.0),
+            };
+            let gain = parent.gain.clone();
+            self.insert(places, weighed, gain, hope);
         }
     }
 
-    /// A node's composition with one more candidate: estimated, and weighed where the estimate
-    /// may hide a weight above `worth`.
-    fn child(&self, node: usize, place: usize, worth: f64) -> Weighed {
+    /// A first estimate of a node's composition with one more candidate.
+    fn child(&self, node: usize, place: usize) -> Weighed {
         let base = &self.nodes[node].weighed;
         let newcomer = self.order[place].1;
         if base.members.is_empty() {
@@ -193,17 +235,7 @@ impl Search<'_, '_> {
         }
         let (members, start) = self.start(base, newcomer);
         let newest = members.binary_search(&newcomer).unwrap_or(0);
-        let estimate = weigh_added(self.stock, base, &members, &start, newest);
-        let mut places = self.nodes[node].places.clone();
-        places.push(place);
-        let ln_weight = self.ln_weight(&places, &estimate);
-        let blends = estimate.chains > base.chains;
-        let hides = ln_weight == f64::NEG_INFINITY || ln_weight + BLEND_ALLOWANCE > worth;
-        if blends && hides {
-            weigh(self.stock, &members, &start, true, false)
-        } else {
-            estimate
-        }
+        weigh_added(self.stock, base, &members, &start, newest)
     }
 
     /// ln weight of the best composition so far.
@@ -220,7 +252,7 @@ impl Search<'_, '_> {
         let wanted = |node: &Node| {
             if node.ln_weight > best + PROFILES_LN {
                 Care::Joint
-            } else if node.ln_weight > best + ROUGH_LN {
+            } else if node.ln_hope > best + ROUGH_LN {
                 Care::Profiles
             } else {
                 Care::Added
@@ -234,7 +266,7 @@ impl Search<'_, '_> {
             .filter(|(n, care)| self.nodes[*n].weighed.care < *care)
             .collect();
         due.sort_by(|(a, _), (b, _)| {
-            let (x, y) = (self.nodes[*a].ln_weight, self.nodes[*b].ln_weight);
+            let (x, y) = (self.nodes[*a].ln_hope, self.nodes[*b].ln_hope);
             y.total_cmp(&x).then(a.cmp(b))
         });
         due.truncate(BATCH);
@@ -261,7 +293,9 @@ impl Search<'_, '_> {
             })
             .collect();
         for ((n, _), weighed) in which.into_iter().zip(weighed) {
-            self.nodes[n].ln_weight = self.ln_weight(&self.nodes[n].places, &weighed);
+            let ln_weight = self.ln_weight(&self.nodes[n].places, &weighed);
+            self.nodes[n].ln_weight = ln_weight;
+            self.nodes[n].ln_hope = ln_weight;
             self.nodes[n].weighed = weighed;
             self.learn(n);
         }
@@ -293,8 +327,12 @@ impl Search<'_, '_> {
         pairs.into_iter().unzip()
     }
 
-    fn insert(&mut self, places: Vec<usize>, weighed: Weighed, mut gain: Vec<f64>) {
+    fn insert(&mut self, places: Vec<usize>, weighed: Weighed, mut gain: Vec<f64>, hope: Hope) {
         let ln_weight = self.ln_weight(&places, &weighed);
+        let ln_hope = match hope {
+            Hope::Above(nats) => ln_weight + nats,
+            Hope::AtMost(ln) => ln,
+        };
         // What is known of any evaluated part of this composition holds here too.
         for node in &self.nodes {
             if subset(&node.places, &places) {
@@ -308,6 +346,7 @@ impl Search<'_, '_> {
             places,
             weighed,
             ln_weight,
+            ln_hope,
             gain,
             done,
         });
@@ -317,6 +356,9 @@ impl Search<'_, '_> {
     /// What each member gained over an evaluated composition without it bounds what it can gain
     /// over any larger one.
     fn learn(&mut self, newest: usize) {
+        if self.nodes[newest].is_hidden() {
+            return;
+        }
         let places = self.nodes[newest].places.clone();
         for x in &places {
             let rest: Vec<usize> = places.iter().copied().filter(|p| p != x).collect();
@@ -326,9 +368,14 @@ impl Search<'_, '_> {
             let Some(gained) = self.gained(base, newest) else {
                 continue;
             };
-            let new = &self.nodes[newest].weighed;
-            let chains = new.chains.saturating_sub(self.nodes[base].weighed.chains) as f64;
-            let margin = AMOUNT_MARGIN + (CHAIN_MARGIN * chains).min(CHAIN_MARGIN_MOST);
+            let new = &self.nodes[newest];
+            let chains =
+                new.weighed.chains - self.nodes[base].weighed.chains.min(new.weighed.chains);
+            let blends = match new.weighed.care {
+                Care::Added if chains > 0 => BLEND_ALLOWANCE,
+                _ => (CHAIN_MARGIN * chains as f64).min(CHAIN_MARGIN_MOST),
+            };
+            let margin = AMOUNT_MARGIN + blends;
             let limit = gained + self.ln_odds[self.order[*x].1] + margin;
             for node in &mut self.nodes {
                 if subset(&rest, &node.places) {
