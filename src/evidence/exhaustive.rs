@@ -3,7 +3,8 @@
 use super::assembly::Stock;
 use super::composition::{middle, weigh};
 use super::density::ln_sum_exp;
-use super::prepare::{Prepared, Scene};
+use super::prepare::Prepared;
+use super::scene::Scene;
 use super::settings::{PresenceRule, Settings};
 use super::{Candidate, Conditions, Observation};
 
@@ -32,7 +33,7 @@ pub struct Exhaustive {
 /// Most candidates that are enumerated.
 pub const MOST_CANDIDATES: usize = 12;
 
-/// Weighs all compositions; absent beyond [`MOST_CANDIDATES`].
+/// Weighs all compositions; absent beyond twelve candidates.
 pub fn exhaustive(
     observations: &[Observation],
     conditions: &Conditions,

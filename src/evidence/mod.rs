@@ -10,9 +10,11 @@ mod exhaustive;
 mod matching;
 mod prepare;
 mod quadrature;
+mod scene;
 mod search;
 mod settings;
 mod summary;
+mod view;
 
 pub use density::median;
 pub use exhaustive::{Entry, Exhaustive, exhaustive};

@@ -26,8 +26,10 @@ impl Bench {
         let root = Path::new(env!("CARGO_MANIFEST_DIR"));
         let bytes = std::fs::read(root.join(readings))?;
         let file = setup::read_setup(&root.join(setup_file))?;
-        let mut flags = setup::SetupOverrides::default();
-        flags.candidates = candidates.map(setup::Candidates::from_text);
+        let flags = setup::SetupOverrides {
+            candidates: candidates.map(setup::Candidates::from_text),
+            ..Default::default()
+        };
         let setup = setup::resolve(Some(file), flags)?;
         let library = library::embedded()?;
         let shortlist = verdict::shortlist(&library, &setup)?;

@@ -1,0 +1,191 @@
+//! The evidence of one composition: amounts, emitter shifts, common shift and clutter rate
+//! integrated out, counting only what was seen.
+
+mod bars;
+mod climb;
+mod integrate;
+mod profile;
+mod slice;
+mod unexplained;
+
+use super::assembly::{Assembly, Latent, Stock};
+use super::density::ln_sum_exp;
+use super::matching::{LANES, Lanes};
+use super::settings::MixtureRule;
+pub use profile::Profile;
+use slice::Slice;
+
+/// A composition with its evidence.
+#[derive(Debug, Clone)]
+pub struct Weighed {
+    /// Candidate indices, ascending.
+    pub members: Vec<usize>,
+    /// ln E*(S).
+    pub ln_evidence: f64,
+    /// ln of the integrand by shift node and clutter lane, without their weights.
+    pub nodes: Vec<Lanes>,
+    /// The latent state with the largest weighted integrand.
+    pub mode: Vec<Latent>,
+    /// ln L at the mode by shift node and lane, nothing barred; −∞ where left out.
+    pub mode_ln: Vec<Lanes>,
+    /// Lines of different members that blend.
+    pub chains: usize,
+    /// How closely the amounts were integrated.
+    pub care: Care,
+}
+
+/// How closely the amounts of a composition were integrated.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
+pub enum Care {
+    /// The newest member was added without moving the others.
+    Added,
+    /// Product of profiles about the mode.
+    Profiles,
+    /// Amounts integrated jointly, where they are few enough.
+    Joint,
+}
+
+/// Shift and amount nodes this far below the best, in ln, are left out.
+const NEGLIGIBLE_LN: f64 = -9.0;
+
+/// ln Σ w over shift nodes and lanes.
+pub fn ln_total(stock: &Stock, nodes: &[Lanes]) -> f64 {
+    let mut terms = Vec::with_capacity(nodes.len() * LANES);
+    for (node, weight) in nodes.iter().zip(stock.scene.offset.weights()) {
+        let lanes = node.iter().zip(&stock.lane_ln_weight);
+        terms.extend(lanes.map(|(ln, lane)| ln + weight.ln() + lane));
+    }
+    ln_sum_exp(&terms)
+}
+
+/// The shift node and lane that carry most of a composition's evidence.
+pub fn best_place(stock: &Stock, weighed: &Weighed) -> (usize, usize) {
+    let mut best = (f64::NEG_INFINITY, 0, 0);
+    for (d, (node, w)) in weighed
+        .nodes
+        .iter()
+        .zip(stock.scene.offset.weights())
+        .enumerate()
+    {
+        for (l, (ln, lane)) in node.iter().zip(&stock.lane_ln_weight).enumerate() {
+            let value = ln + w.ln() + lane;
+            if value > best.0 {
+                best = (value, d, l);
+            }
+        }
+    }
+    (best.1, best.2)
+}
+
+/// Weighs a composition. `start` gives an amount node for each member to begin from.
+pub fn weigh(
+    stock: &Stock,
+    members: &[usize],
+    start: &[Latent],
+    barring: bool,
+    joint: bool,
+) -> Weighed {
+    let hopeless = barring && members.iter().any(|m| stock.prepared[*m].pairs.is_empty());
+    if hopeless {
+        let nodes = vec![[f64::NEG_INFINITY; LANES]; stock.scene.offset.len()];
+        return Weighed {
+            members: members.to_vec(),
+            ln_evidence: f64::NEG_INFINITY,
+            mode_ln: nodes.clone(),
+            nodes,
+            mode: start.to_vec(),
+            chains: 0,
+            care: Care::Joint,
+        };
+    }
+    if members.is_empty() {
+        let nodes = vec![[0.0; LANES]; stock.scene.offset.len()];
+        let ln_evidence = ln_total(stock, &nodes);
+        return Weighed {
+            members: Vec::new(),
+            ln_evidence,
+            mode_ln: nodes.clone(),
+            nodes,
+            mode: Vec::new(),
+            chains: 0,
+            care: Care::Joint,
+        };
+    }
+    let assembly = Assembly::new(stock, members);
+    let mut profile = Profile::new(stock, &assembly, start.to_vec(), barring);
+    let nodes = match stock.scene.settings.mixture {
+        MixtureRule::Product => {
+            profile.climb();
+            // Away from the start other members may be in doubt.
+            if barring && profile.bar_more() {
+                profile.climb();
+            }
+            profile.product_at_best(joint)
+        }
+        MixtureRule::Joint => profile.joint(barring),
+    };
+    Weighed {
+        members: members.to_vec(),
+        ln_evidence: ln_total(stock, &nodes),
+        nodes,
+        mode_ln: profile.ln_unbarred(),
+        mode: profile.latents.clone(),
+        chains: assembly.chains,
+        care: if joint || members.len() == 1 {
+            Care::Joint
+        } else {
+            Care::Profiles
+        },
+    }
+}
+
+/// Adds one member to a composition without moving the others from their mode: a first, cheap
+/// estimate of E*(S ∪ x) = E*(S) · Σ_α w/Z (L(S ∪ x) − L(S ∪ x; x barred))/L(S) at the mode of S.
+///
+/// `members` and `start` are of the whole composition, `newest` the place of the added one.
+pub fn weigh_added(
+    stock: &Stock,
+    base: &Weighed,
+    members: &[usize],
+    start: &[Latent],
+    newest: usize,
+) -> Weighed {
+    let assembly = Assembly::new(stock, members);
+    let mut profile = Profile::new(stock, &assembly, start.to_vec(), false);
+    profile.shifts = (0..base.nodes.len())
+        .filter(|d| base.mode_ln[*d][0].is_finite())
+        .collect();
+    profile.doubtful = vec![newest];
+    profile.place_bars();
+    profile.refresh();
+    profile.jump(newest);
+    let mode: Slice = profile.shifts.iter().map(|d| base.mode_ln[*d]).collect();
+    let mut added = profile.member_profile(newest, &mode);
+    for (lanes, d) in added.iter_mut().zip(&profile.shifts) {
+        for (ln, of_base) in lanes.iter_mut().zip(&base.nodes[*d]) {
+            *ln += of_base;
+        }
+    }
+    let nodes = profile.spread(added);
+    Weighed {
+        members: members.to_vec(),
+        ln_evidence: ln_total(stock, &nodes),
+        nodes,
+        mode_ln: profile.ln_unbarred(),
+        mode: profile.latents.clone(),
+        chains: assembly.chains,
+        care: Care::Added,
+    }
+}
+
+/// A middling state to begin from.
+pub fn middle(stock: &Stock, candidate: usize) -> Latent {
+    Latent {
+        amount: stock.scene.amount.len() / 2,
+        shifts: stock.prepared[candidate]
+            .shifts
+            .iter()
+            .map(|q| q.len() / 2)
+            .collect(),
+    }
+}
