@@ -52,7 +52,7 @@ impl View {
 
     pub(super) fn missing(&self, stock: &Stock) -> Vec<MissingFeature> {
         let mut list: Vec<MissingFeature> = self
-            .lines_with_bare(stock)
+            .lines_of_members()
             .into_iter()
             .filter(|(_, _, detection, matched)| *detection >= EXPECTED && *matched < 0.5)
             .map(|(candidate, line, detection_probability, _)| {
@@ -75,8 +75,7 @@ impl View {
     }
 
     /// (candidate, line, detection probability, probability of having caused any reading).
-    pub(super) fn lines_with_bare(&self, stock: &Stock) -> Vec<(usize, usize, f64, f64)> {
-        let _ = stock;
+    fn lines_of_members(&self) -> Vec<(usize, usize, f64, f64)> {
         self.lines
             .iter()
             .map(|(line, found)| {
