@@ -44,6 +44,9 @@ pub enum Failure {
     /// A report that cannot be put into its format.
     #[error("the report cannot be written as JSON")]
     Json(#[from] serde_json::Error),
+    /// A table that cannot be put into its format.
+    #[error("the table cannot be written as CSV")]
+    Csv(#[from] csv::Error),
 }
 
 impl Failure {
@@ -63,7 +66,7 @@ impl Failure {
             | Self::Library(LibraryError::Faulty { .. }) => Exit::BadData,
             Self::Input { .. } | Self::Library(LibraryError::Unreadable { .. }) => Exit::NoInput,
             Self::Store(_) | Self::Print(_) => Exit::NoOutput,
-            Self::Json(_) => Exit::Internal,
+            Self::Json(_) | Self::Csv(_) => Exit::Internal,
         }
     }
 }

@@ -4,6 +4,7 @@ mod exit;
 mod failure;
 mod identify;
 mod inputs;
+mod library;
 mod options;
 mod output;
 
@@ -24,6 +25,9 @@ pub struct Cli {
 enum Command {
     /// Rank the compositions that explain a table of readings
     Identify(identify::IdentifyOptions),
+    /// Look at the reference library: substances, lines and band heads
+    #[command(subcommand)]
+    Library(library::LibraryCommand),
 }
 
 /// Runs the command.
@@ -33,6 +37,7 @@ enum Command {
 pub fn run(cli: &Cli) -> Result<Exit, Failure> {
     match &cli.command {
         Command::Identify(options) => identify::run(options),
+        Command::Library(command) => library::run(command),
     }
 }
 

@@ -157,6 +157,20 @@ impl LibraryOptions {
     }
 }
 
+impl LibraryOptions {
+    /// The library that the flags ask for, where there is no set-up.
+    pub fn load_for_reading(&self) -> Result<Library, Failure> {
+        if let Some(path) = &self.library_only {
+            return Ok(load_folder(path)?);
+        }
+        let base = embedded()?;
+        Ok(match &self.library {
+            Some(path) => extend_from(base, path)?,
+            None => base,
+        })
+    }
+}
+
 fn source(text: &str) -> Result<SourceKind, String> {
     match text {
         "flame" => Ok(SourceKind::Flame),

@@ -14,7 +14,7 @@ pub fn identify_json(view: &IdentifyView) -> Result<String, serde_json::Error> {
 
 /// Writes characters that would act on a terminal as `\uXXXX`, which reads back as the same text.
 /// They occur in strings only: JSON has no other place for them but line feeds.
-fn guarded(json: &str) -> String {
+pub(super) fn guarded(json: &str) -> String {
     let mut shown = String::with_capacity(json.len());
     for letter in json.chars() {
         if letter != '\n' && acts(letter) {

@@ -4,8 +4,10 @@
 //! alone, so that every number of the text stands in the JSON too.
 
 mod build;
+pub mod catalogue;
 mod escape;
 mod json;
+mod layout;
 mod picture;
 mod text;
 mod view;

@@ -1,11 +1,10 @@
 //! The text report: 80 columns, plain characters, colour as a help only.
 
-mod layout;
 mod sample;
 
 use super::escape::plain;
 use super::view::{IdentifyView, InputView, RefusalView};
-use layout::{heading, pairs, paragraph};
+use crate::report::layout::{WIDTH, heading, pairs, paragraph};
 
 /// How much of a report is wanted.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -26,7 +25,7 @@ pub fn identify_text(view: &IdentifyView, detail: Detail) -> String {
             Detail::Answers => sample::answer(sample, several),
         });
     }
-    let rule = format!("\n{}\n\n", "-".repeat(layout::WIDTH));
+    let rule = format!("\n{}\n\n", "-".repeat(WIDTH));
     let mut text = blocks.join(if detail == Detail::Full { &rule } else { "" });
     let mut closing = Vec::new();
     closing.extend(refused(&view.refused));

@@ -1,6 +1,8 @@
 //! The report of one sample, in the order in which a reader needs it.
 
-use super::layout::{Align, Cell, GOOD, OPEN, STRONG, WRONG, columns, heading, painted, paragraph};
+use crate::report::layout::{
+    Align, Cell, GOOD, OPEN, STRONG, WRONG, columns, heading, painted, paragraph,
+};
 use crate::report::picture::picture;
 use crate::report::view::{CauseView, CompositionView, ReadingView, SampleView, SubstanceView};
 use crate::verdict::wording::{
