@@ -24,7 +24,7 @@ pub struct Cli {
 #[derive(Debug, Subcommand)]
 enum Command {
     /// Rank the compositions that explain a table of readings
-    Identify(identify::IdentifyOptions),
+    Identify(Box<identify::IdentifyOptions>),
     /// Look at the reference library: substances, lines and band heads
     #[command(subcommand)]
     Library(library::LibraryCommand),
