@@ -1,5 +1,6 @@
 //! Writing files whole or not at all.
 
+use std::collections::BTreeMap;
 use std::fs::{self, OpenOptions};
 use std::io::{self, Write};
 use std::path::{Path, PathBuf};
@@ -36,6 +37,25 @@ pub fn write_whole(path: &Path, content: &[u8]) -> Result<(), StoreError> {
         }
         Err(error) => Err(failed(error)),
     }
+}
+
+/// Writes the tables of a folder by name, each whole or not at all; the folder and folders in it
+/// are made where they are missing.
+///
+/// # Errors
+/// If the system does not let one be written; those before it are.
+pub fn write_tables(folder: &Path, tables: &BTreeMap<String, String>) -> Result<(), StoreError> {
+    for (name, text) in tables {
+        let path = folder.join(name);
+        if let Some(parent) = path.parent() {
+            fs::create_dir_all(parent).map_err(|source| StoreError {
+                path: parent.to_owned(),
+                source,
+            })?;
+        }
+        write_whole(&path, text.as_bytes())?;
+    }
+    Ok(())
 }
 
 fn write_into(path: &Path, content: &[u8]) -> io::Result<()> {

@@ -165,3 +165,76 @@ fn wrong_numbers_are_refused() -> Outcome {
     }
     Ok(())
 }
+
+/// A lamp that the library does not know is named once it is enrolled, and not before.
+#[test]
+fn an_enrolled_lamp_is_found_again() -> Outcome {
+    let folder = tempfile::tempdir()?;
+    let into = folder.path().join("own");
+    let into = into.to_string_lossy();
+    let lamp = "samples/bay_8.csv";
+    let setup = ["--setup", "samples/ccd.toml"];
+    let enrol = |name: &str, more: &[&str]| {
+        library(
+            &[
+                &["enrol", lamp, "--name", name, "--into", &into][..],
+                &setup,
+                more,
+            ]
+            .concat(),
+        )
+    };
+    let output = enrol("Bay 8 lamp", &["--contains", "Hg"])?;
+    let said = String::from_utf8(output.stdout)?;
+    assert!(output.status.success(), "{said}");
+    assert!(
+        said.starts_with("Cautions") && said.contains("ercury"),
+        "{said}"
+    );
+
+    let known = Command::new(env!("CARGO_BIN_EXE_linstock"))
+        .current_dir(root())
+        .args([
+            "identify",
+            lamp,
+            "--setup",
+            "samples/ccd.toml",
+            "--candidates",
+            "everything",
+        ])
+        .args(["--library", &into, "--format", "json"])
+        .output()?;
+    let report: serde_json::Value = serde_json::from_slice(&known.stdout)?;
+    let leader = &report["samples"][0]["compositions"][0]["substances"];
+    assert_eq!(leader, &serde_json::json!(["bay-8-lamp"]));
+    assert_eq!(known.status.code(), Some(0));
+
+    let checked = library(&["check", &into])?;
+    assert!(checked.status.success());
+    assert_eq!(enrol("Bay 8 lamp", &[])?.status.code(), Some(65));
+    assert!(enrol("Bay 8 lamp", &["--replace"])?.status.success());
+    assert_eq!(enrol("helium", &[])?.status.code(), Some(2));
+    assert_eq!(enrol("??", &[])?.status.code(), Some(65));
+    Ok(())
+}
+
+#[test]
+fn what_cannot_be_enrolled_leaves_no_folder() -> Outcome {
+    let folder = tempfile::tempdir()?;
+    let into = folder.path().join("own");
+    for (readings, status) in [
+        ("samples/empty.csv", 65),
+        ("samples/class.csv", 2),
+        ("no/such.csv", 66),
+    ] {
+        let path = into.to_string_lossy();
+        let arguments = ["enrol", readings, "--name", "x", "--into", &path];
+        assert_eq!(
+            library(&arguments)?.status.code(),
+            Some(status),
+            "{readings}"
+        );
+        assert!(!into.exists(), "{readings}");
+    }
+    Ok(())
+}

@@ -1,7 +1,7 @@
 //! What keeps a command from giving a report.
 
 use super::Exit;
-use crate::library::LibraryError;
+use crate::library::{EnrolError, LibraryError};
 use crate::setup::SetupError;
 use crate::store::StoreError;
 use crate::verdict::ShortlistError;
@@ -35,6 +35,12 @@ pub enum Failure {
         /// Flags name substances; otherwise the set-up file does.
         from_flags: bool,
     },
+    /// A sample that cannot be enrolled.
+    #[error(transparent)]
+    Enrol(#[from] EnrolError),
+    /// Readings that cannot be used, one message a line.
+    #[error("{0}")]
+    Readings(String),
     /// Output that cannot be written to a file.
     #[error(transparent)]
     Store(#[from] StoreError),
@@ -62,6 +68,8 @@ impl Failure {
                 Exit::Usage
             }
             Self::Setup(_)
+            | Self::Readings(_)
+            | Self::Enrol(_)
             | Self::Shortlist { .. }
             | Self::Library(LibraryError::Faulty { .. }) => Exit::BadData,
             Self::Input { .. } | Self::Library(LibraryError::Unreadable { .. }) => Exit::NoInput,

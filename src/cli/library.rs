@@ -1,5 +1,6 @@
 //! `linstock library`: what is known.
 
+use super::enrol;
 use super::options::LibraryOptions;
 use super::{Exit, Failure};
 use crate::library::{Library, embedded, extend_from, load_folder};
@@ -23,6 +24,8 @@ pub(super) enum LibraryCommand {
     Lines(LinesOptions),
     /// Check a folder of tables
     Check(CheckOptions),
+    /// Make a reference of your own from readings of a known sample
+    Enrol(Box<enrol::EnrolOptions>),
 }
 
 /// Options of `library list`.
@@ -123,6 +126,7 @@ pub(super) fn run(command: &LibraryCommand) -> Result<Exit, Failure> {
         LibraryCommand::Show(options) => show(options),
         LibraryCommand::Lines(options) => lines(options),
         LibraryCommand::Check(options) => check(options),
+        LibraryCommand::Enrol(options) => enrol::run(options),
     }?;
     Ok(Exit::Decisive)
 }

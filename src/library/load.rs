@@ -4,6 +4,7 @@
 
 use super::Library;
 use super::assemble::assemble;
+use super::enrol::Tables;
 use super::table::TableFile;
 use include_dir::{Dir, include_dir};
 use sha2::{Digest, Sha256};
@@ -131,6 +132,44 @@ pub fn load_folder(path: &Path) -> Result<Library, LibraryError> {
 /// As for [`load_folder`].
 pub fn extend_from(base: Library, path: &Path) -> Result<Library, LibraryError> {
     let tables = folder_tables(path)?;
+    let sha256 = digest(Some(&base), &tables);
+    assemble(Some(base), &tables, sha256).map_err(|faults| faulty(path, faults))
+}
+
+/// The tables of a folder as they stand; none if the folder is not there yet.
+///
+/// # Errors
+/// [`LibraryError::Unreadable`] if the system cannot read it or a table is not UTF-8.
+pub fn read_tables(path: &Path) -> Result<Tables, LibraryError> {
+    if !path.exists() {
+        return Ok(Tables::new());
+    }
+    folder_tables(path)?
+        .into_iter()
+        .map(|table| {
+            let text = String::from_utf8(table.bytes.into_owned());
+            let text = text.map_err(|_| LibraryError::Unreadable {
+                path: path.join(&table.name),
+                reason: "not UTF-8".to_owned(),
+            })?;
+            Ok((table.name, text))
+        })
+        .collect()
+}
+
+/// A library with tables laid over it that are not in their folder yet; the rule is that of
+/// [`extend_from`].
+///
+/// # Errors
+/// [`LibraryError::Faulty`] with every fault of every table.
+pub fn extend_with(base: Library, path: &Path, tables: &Tables) -> Result<Library, LibraryError> {
+    let tables: Vec<TableFile> = tables
+        .iter()
+        .map(|(name, text)| TableFile {
+            name: name.clone(),
+            bytes: Cow::Borrowed(text.as_bytes()),
+        })
+        .collect();
     let sha256 = digest(Some(&base), &tables);
     assemble(Some(base), &tables, sha256).map_err(|faults| faulty(path, faults))
 }

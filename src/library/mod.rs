@@ -3,13 +3,17 @@
 
 mod assemble;
 mod draft;
+mod enrol;
 mod layout;
 mod load;
 mod names;
 mod priors;
 mod table;
 
-pub use load::{LibraryError, LibraryFault, embedded, extend_from, load_folder};
+pub use enrol::{EnrolError, Enrolment, Tables, enrol, identifier};
+pub use load::{
+    LibraryError, LibraryFault, embedded, extend_from, extend_with, load_folder, read_tables,
+};
 pub use names::NameError;
 pub use priors::Selection;
 

@@ -6,6 +6,17 @@ use crate::library::SourceKind;
 use crate::report::layout::{Align, Cell, columns, heading, paragraph};
 use crate::verdict::wording::wavelength;
 
+const CAUTIONS: &str = "Cautions (the rules of your own place come first)";
+
+/// Cautions, with an empty line after them; nothing if there are none.
+pub fn cautions_text(cautions: &[&str]) -> String {
+    if cautions.is_empty() {
+        return String::new();
+    }
+    let cautions: Vec<String> = cautions.iter().map(|text| (*text).to_owned()).collect();
+    format!("{}{}\n", heading(CAUTIONS), bullets(&cautions))
+}
+
 /// The substances of a library.
 pub fn list_text(substances: &[ListedView]) -> String {
     let mut rows = vec![cells(["", "flame", "discharge", "absorption", "substance"])];
@@ -91,8 +102,7 @@ pub fn page_text(page: &PageView) -> String {
     text.push_str(&section(&listed, &feature_table(&page.features, false)));
     let beside = format!("Others within {} nm of its strongest", page.within_nm);
     text.push_str(&section(&beside, &near(page)));
-    let cautions = "Cautions (the rules of your own place come first)";
-    text.push_str(&section(cautions, &bullets(&page.cautions)));
+    text.push_str(&section(CAUTIONS, &bullets(&page.cautions)));
     let sources: Vec<String> = page
         .sources
         .iter()
