@@ -6,6 +6,8 @@
 //! whichever side is taken in order: few readings among many lines keep the frontier short one
 //! way, a wide band over many readings the other.
 
+use wide::f64x4;
+
 /// Lanes: one per node of the clutter rate.
 pub const LANES: usize = 4;
 
@@ -16,17 +18,27 @@ pub type Lanes = [f64; LANES];
 /// pairs that find no place are left out.
 const FRONTIER: usize = 12;
 
+/// Columns that are summed side by side: few enough that all masks stay in the processor's cache.
+const BLOCK: usize = 8;
+
+type Block = [f64x4; 2];
+
+const ONES: Block = [f64x4::ONE; 2];
+const ZEROS: Block = [f64x4::ZERO; 2];
+
 /// Features with the readings they may have caused, and working memory for the sum.
 ///
-/// Sums for several columns (a node of the common shift in one clutter lane each) run side by
-/// side: the pattern of matchings is the same in all of them.
+/// Sums for several columns (a node of the common shift in one clutter lane each) follow one plan,
+/// a block of columns at a time: the pattern of matchings is the same in all of them.
 #[derive(Debug, Default, Clone)]
 pub struct Matching {
     columns: usize,
     /// (feature, reading), feature after feature.
     pairs: Vec<(usize, usize)>,
-    /// r of each pair, a row of columns per pair.
-    r: Vec<f64>,
+    /// r of each pair, the blocks of its columns in turn; columns beyond the last hold 0.
+    r: Vec<Block>,
+    /// r of the pair being added.
+    filled: Vec<f64>,
     features: usize,
     /// (taken in order, held in the frontier, pair).
     order: Vec<(usize, usize, usize)>,
@@ -35,10 +47,26 @@ pub struct Matching {
     last: Vec<usize>,
     /// Frontier: who is behind each bit.
     active: Vec<usize>,
-    /// A row of columns per mask.
-    states: Vec<f64>,
-    /// (bit, pair) of the one being taken.
-    row: Vec<(usize, usize)>,
+    steps: Vec<Step>,
+    /// (bit as a mask, pair) of all steps.
+    partners: Vec<(usize, usize)>,
+    /// Places of the bits that are forgotten, of all steps.
+    forgotten: Vec<usize>,
+    /// The sum so far for each mask, in the columns of one block.
+    states: Vec<Block>,
+    /// The same before the step.
+    before: Vec<Block>,
+}
+
+/// One more is taken: it may have any of its partners, if that is free, or none.
+#[derive(Debug, Clone, Copy)]
+struct Step {
+    /// Bits of the frontier while it is taken.
+    bits: usize,
+    /// End of its partners.
+    partners: usize,
+    /// End of the bits forgotten after it.
+    forgotten: usize,
 }
 
 impl Matching {
@@ -52,9 +80,13 @@ impl Matching {
 
     /// Adds a pair of the feature being built; `fill` writes r for every column.
     pub fn pair(&mut self, reading: usize, fill: impl FnOnce(&mut [f64])) {
-        let start = self.r.len();
-        self.r.resize(start + self.columns, 0.0);
-        fill(&mut self.r[start..]);
+        self.filled.clear();
+        self.filled.resize(self.blocks() * BLOCK, 0.0);
+        fill(&mut self.filled[..self.columns]);
+        self.r.extend(self.filled.chunks_exact(BLOCK).map(|c| {
+            let half = |k: usize| f64x4::new([c[k], c[k + 1], c[k + 2], c[k + 3]]);
+            [half(0), half(4)]
+        }));
         self.pairs.push((self.features, reading));
     }
 
@@ -63,34 +95,19 @@ impl Matching {
         self.features += 1;
     }
 
+    fn blocks(&self) -> usize {
+        self.columns.div_ceil(BLOCK)
+    }
+
     /// Appends ln Σ over matchings Π r for every column.
     pub fn ln_sums(&mut self, out: &mut Vec<f64>) {
         self.choose_side();
-        self.active.clear();
-        self.states.clear();
-        self.states.resize(self.columns, 1.0);
+        self.plan();
         let first = out.len();
-        out.resize(first + self.columns, 0.0);
-        let mut start = 0;
-        let mut taken = 0;
-        while start < self.order.len() {
-            let outer = self.order[start].0;
-            let end = start
-                + self.order[start..]
-                    .iter()
-                    .take_while(|o| o.0 == outer)
-                    .count();
-            self.take(start, end);
-            self.retire(end - 1);
-            taken += 1;
-            if self.active.is_empty() || taken % 8 == 0 {
-                rescale(&mut self.states, &mut out[first..]);
-            }
-            start = end;
+        for block in 0..self.blocks() {
+            out.extend(self.sum_block(block));
         }
-        for (ln, sum) in out[first..].iter_mut().zip(self.states.iter()) {
-            *ln += sum.ln();
-        }
+        out.truncate(first + self.columns);
     }
 
     /// Takes features or readings in order, whichever is cheaper.
@@ -110,62 +127,120 @@ impl Matching {
         }
     }
 
-    /// Lets one more take at most one free partner. Masks descend so that the state a match comes
-    /// from has not yet seen this one.
-    fn take(&mut self, start: usize, end: usize) {
-        self.row.clear();
-        for (_, inner, pair) in &self.order[start..end] {
-            let bit = match self.active.iter().position(|a| a == inner) {
-                Some(bit) => bit,
-                None if self.active.len() < FRONTIER => {
-                    self.active.push(*inner);
-                    self.states.resize(self.states.len() * 2, 0.0);
-                    self.active.len() - 1
-                }
-                None => continue,
-            };
-            self.row.push((1 << bit, *pair));
-        }
-        let width = self.columns;
-        for mask in (1..self.states.len() / width).rev() {
-            let (below, from_here) = self.states.split_at_mut(mask * width);
-            let here = &mut from_here[..width];
-            for (bit, pair) in &self.row {
-                if mask & bit != 0 {
-                    let from = &below[(mask ^ bit) * width..][..width];
-                    let r = &self.r[pair * width..][..width];
-                    for ((to, from), r) in here.iter_mut().zip(from).zip(r) {
-                        *to += from * r;
+    /// What to do with the frontier, step by step.
+    fn plan(&mut self) {
+        self.active.clear();
+        self.steps.clear();
+        self.partners.clear();
+        self.forgotten.clear();
+        let mut start = 0;
+        while start < self.order.len() {
+            let outer = self.order[start].0;
+            let mut end = start;
+            while end < self.order.len() && self.order[end].0 == outer {
+                let (_, inner, pair) = self.order[end];
+                end += 1;
+                let bit = match self.active.iter().position(|a| *a == inner) {
+                    Some(bit) => bit,
+                    None if self.active.len() < FRONTIER => {
+                        self.active.push(inner);
+                        self.active.len() - 1
                     }
+                    None => continue,
+                };
+                self.partners.push((1 << bit, pair));
+            }
+            let bits = self.active.len();
+            let mut bit = 0;
+            while bit < self.active.len() {
+                if self.last[self.active[bit]] >= end {
+                    bit += 1;
+                } else {
+                    // Partners that none later in the order reaches.
+                    self.active.remove(bit);
+                    self.forgotten.push(bit);
                 }
             }
+            self.steps.push(Step {
+                bits,
+                partners: self.partners.len(),
+                forgotten: self.forgotten.len(),
+            });
+            start = end;
         }
     }
 
-    /// Forgets whether partners were taken that none later in the order reaches.
-    fn retire(&mut self, place: usize) {
-        let width = self.columns;
-        let mut bit = 0;
-        while bit < self.active.len() {
-            if self.last[self.active[bit]] > place {
-                bit += 1;
-                continue;
-            }
-            self.active.remove(bit);
-            let low = (1usize << bit) - 1;
-            let half = self.states.len() / width / 2;
-            for mask in 0..half {
-                // Spread the mask around the bit that goes: it never lies before the mask itself.
-                let open = (mask & low) | ((mask & !low) << 1);
-                let taken = open | 1 << bit;
-                for column in 0..width {
-                    self.states[mask * width + column] =
-                        self.states[open * width + column] + self.states[taken * width + column];
+    fn sum_block(&mut self, block: usize) -> [f64; BLOCK] {
+        let blocks = self.blocks();
+        let mut ln_scale = [0.0; BLOCK];
+        let (mut partner, mut forgotten) = (0, 0);
+        self.states.clear();
+        self.states.push(ONES);
+        for (taken, step) in self.steps.iter().enumerate() {
+            self.states.resize(1 << step.bits, ZEROS);
+            match &self.partners[partner..step.partners] {
+                [(bit, pair)] => take_only(&mut self.states, *bit, &self.r[pair * blocks + block]),
+                several => {
+                    self.before.clone_from(&self.states);
+                    for (bit, pair) in several {
+                        let r = &self.r[pair * blocks + block];
+                        take(&mut self.states, &self.before, *bit, r);
+                    }
                 }
             }
-            self.states.truncate(half * width);
+            for bit in &self.forgotten[forgotten..step.forgotten] {
+                forget(&mut self.states, *bit);
+            }
+            (partner, forgotten) = (step.partners, step.forgotten);
+            if self.states.len() == 1 || taken % 8 == 7 {
+                rescale(&mut self.states, &mut ln_scale);
+            }
+        }
+        let last = columns(self.states.first().unwrap_or(&ONES));
+        std::array::from_fn(|c| ln_scale[c] + last[c].ln())
+    }
+}
+
+/// to + from · r.
+#[inline(always)]
+fn added(to: &Block, from: &Block, r: &Block) -> Block {
+    [to[0] + from[0] * r[0], to[1] + from[1] * r[1]]
+}
+
+/// Adds the matchings in which one is paired with the partner behind a bit. Masks that hold the
+/// bit lie in runs, so that no mask needs to be looked at.
+fn take(states: &mut [Block], before: &[Block], bit: usize, r: &Block) {
+    let pairs = states
+        .chunks_exact_mut(2 * bit)
+        .zip(before.chunks_exact(2 * bit));
+    for (to, from) in pairs {
+        for (to, from) in to[bit..].iter_mut().zip(&from[..bit]) {
+            *to = added(to, from, r);
         }
     }
+}
+
+/// [`take`] for one that has a single partner: masks without the bit stay as they were.
+fn take_only(states: &mut [Block], bit: usize, r: &Block) {
+    for run in states.chunks_exact_mut(2 * bit) {
+        let (from, to) = run.split_at_mut(bit);
+        for (to, from) in to.iter_mut().zip(&*from) {
+            *to = added(to, from, r);
+        }
+    }
+}
+
+/// Forgets whether the partner behind a bit was taken.
+fn forget(states: &mut Vec<Block>, bit: usize) {
+    let run = 1 << bit;
+    let half = states.len() / 2;
+    for start in (0..half).step_by(run) {
+        for k in 0..run {
+            let (open, taken) = (states[2 * start + k], states[2 * start + run + k]);
+            states[start + k] = [open[0] + taken[0], open[1] + taken[1]];
+        }
+    }
+    states.truncate(half);
 }
 
 /// What a sum over these (feature, reading) pairs would cost from the cheaper side, in steps of
@@ -202,28 +277,33 @@ fn cost(order: &[(usize, usize, usize)], last: &mut Vec<usize>) -> f64 {
 }
 
 /// Keeps long products within range: each column on its own scale.
-fn rescale(states: &mut [f64], ln_scale: &mut [f64]) {
+fn rescale(states: &mut [Block], ln_scale: &mut [f64; BLOCK]) {
     const HIGH: f64 = 1e60;
-    if states.iter().all(|s| *s < HIGH) {
+    let peak = states.iter().fold(ZEROS, |peak, state| {
+        [peak[0].fast_max(state[0]), peak[1].fast_max(state[1])]
+    });
+    let peak = columns(&peak);
+    if peak.iter().all(|p| *p < HIGH) {
         return;
     }
-    let width = ln_scale.len();
-    for (column, ln) in ln_scale.iter_mut().enumerate() {
-        let peak = states
-            .iter()
-            .skip(column)
-            .step_by(width)
-            .copied()
-            .fold(0.0, f64::max);
-        if peak > 1.0 {
-            *ln += peak.ln();
-            states
-                .iter_mut()
-                .skip(column)
-                .step_by(width)
-                .for_each(|s| *s /= peak);
-        }
+    let factor: [f64; BLOCK] = std::array::from_fn(|c| match peak[c] < HIGH {
+        true => 1.0,
+        false => 1.0 / peak[c],
+    });
+    for c in 0..BLOCK {
+        ln_scale[c] -= factor[c].ln();
     }
+    let [a, b, c, d, e, f, g, h] = factor;
+    let factor = [f64x4::new([a, b, c, d]), f64x4::new([e, f, g, h])];
+    for state in states {
+        *state = [state[0] * factor[0], state[1] * factor[1]];
+    }
+}
+
+/// The columns of a block.
+fn columns(block: &Block) -> [f64; BLOCK] {
+    let ([a, b, c, d], [e, f, g, h]) = (block[0].to_array(), block[1].to_array());
+    [a, b, c, d, e, f, g, h]
 }
 
 #[cfg(test)]

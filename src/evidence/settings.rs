@@ -74,7 +74,7 @@ impl Default for Settings {
             presence: PresenceRule::Inside,
             mixture: MixtureRule::Product,
             search_tolerance: 1e-3,
-            search_limit: 400,
+            search_limit: 600,
         }
     }
 }

@@ -8,6 +8,9 @@ pub const DECISIVE_POSTERIOR: f64 = 0.90;
 /// what [`DECISIVE_POSTERIOR`] leaves to everything else.
 pub const UNTESTED_MASS: f64 = 0.01;
 
+/// A bound on the mass not weighed above this bounds nothing: it is said so, without a number.
+pub const UNTESTED_BOUNDLESS: f64 = 0.5;
+
 /// A reading is explained when the chance that nothing weighed caused it is below this.
 /// The chance over-claims when the model is wrong, so only its side of two fences is reported.
 pub const EXPLAINED_BELOW: f64 = 0.2;

@@ -37,6 +37,10 @@ pub struct Workspace {
     pub(super) live: Vec<Vec<usize>>,
     /// Σ r of lines that reach only one reading, by reading and shift.
     pub(super) rivals: Vec<f64>,
+    /// Largest share of each pair in what could explain its reading.
+    pub(super) share: Vec<f64>,
+    /// (line, reading) of the live pairs.
+    pub(super) ends: Vec<(usize, usize)>,
 }
 
 impl Assembly {

@@ -75,43 +75,63 @@ impl Workspace {
         /// Steps of one pair and one mask that a sum may take.
         const AFFORDABLE: f64 = 4000.0;
         const SHARES: [f64; 4] = [1e-3, 1e-2, 3e-2, 0.1];
+        if self.work() <= AFFORDABLE {
+            return;
+        }
+        self.find_shares();
+        for share in SHARES {
+            let shares = &self.share;
+            for qs in &mut self.live {
+                qs.retain(|q| shares[*q] > share);
+            }
+            self.live.retain(|qs| !qs.is_empty());
+            if self.work() <= AFFORDABLE {
+                return;
+            }
+        }
+    }
+
+    /// What the sum over the live pairs would cost.
+    fn work(&mut self) -> f64 {
+        self.ends.clear();
+        for (i, qs) in self.live.iter().enumerate() {
+            self.ends.extend(qs.iter().map(|q| (i, self.reading[*q])));
+        }
+        matching_work(&self.ends)
+    }
+
+    /// The largest share, over the shifts, that each live pair has in all that could explain its
+    /// reading.
+    fn find_shares(&mut self) {
         let Self {
             reading,
             r,
             shifts,
             live,
             rivals,
+            share,
             ..
         } = self;
-        let row = |q: usize| &r[q * *shifts..][..*shifts];
-        for share in SHARES {
-            let pairs: Vec<(usize, usize)> = live
-                .iter()
-                .enumerate()
-                .flat_map(|(i, qs)| qs.iter().map(move |q| (i, *q)))
-                .collect();
-            let ends: Vec<(usize, usize)> = pairs.iter().map(|(i, q)| (*i, reading[*q])).collect();
-            if matching_work(&ends) <= AFFORDABLE {
-                return;
+        let count = reading.iter().max().map_or(0, |j| j + 1);
+        rivals.clear();
+        rivals.resize(count * *shifts, 0.0);
+        for q in live.iter().flatten() {
+            let to = &mut rivals[reading[*q] * *shifts..][..*shifts];
+            for (to, r) in to.iter_mut().zip(&r[q * *shifts..][..*shifts]) {
+                *to += r;
             }
-            let count = ends.iter().map(|(_, j)| j + 1).max().unwrap_or(0);
-            rivals.clear();
-            rivals.resize(count * *shifts, 0.0);
-            for (_, q) in &pairs {
-                for (to, r) in rivals[reading[*q] * *shifts..][..*shifts]
-                    .iter_mut()
-                    .zip(row(*q))
-                {
-                    *to += r;
-                }
-            }
-            for qs in live.iter_mut() {
-                qs.retain(|q| {
-                    let rivals = &rivals[reading[*q] * *shifts..][..*shifts];
-                    row(*q).iter().zip(rivals).any(|(r, all)| *r > share * all)
-                });
-            }
-            live.retain(|qs| !qs.is_empty());
+        }
+        share.clear();
+        share.resize(reading.len(), 0.0);
+        for q in live.iter().flatten() {
+            let all = &rivals[reading[*q] * *shifts..][..*shifts];
+            let own = &r[q * *shifts..][..*shifts];
+            share[*q] = own.iter().zip(all).fold(
+                0.0,
+                |most, (r, all)| {
+                    if *r > most * all { r / all } else { most }
+                },
+            );
         }
     }
 

@@ -5,6 +5,7 @@ use crate::report::layout::{
 };
 use crate::report::picture::picture;
 use crate::report::view::{CauseView, CompositionView, ReadingView, SampleView, SubstanceView};
+use crate::verdict::thresholds::UNTESTED_BOUNDLESS;
 use crate::verdict::wording::{
     at_most, list, probability, wavelength, wavelength_with_uncertainty,
 };
@@ -77,7 +78,11 @@ fn shown(p: Option<f64>) -> String {
 fn compositions(sample: &SampleView) -> Option<String> {
     let mut text = ranking(&sample.compositions, "Compositions")?;
     if let Some(bound) = sample.untested_mass_bound {
-        let note = format!("Compositions not weighed hold {} together.", at_most(bound));
+        let note = if bound > UNTESTED_BOUNDLESS {
+            "Compositions not weighed may hold much of the probability.".to_owned()
+        } else {
+            format!("Compositions not weighed hold {} together.", at_most(bound))
+        };
         text.push_str(&paragraph(&note, "  ", "  "));
     }
     for group in &sample.either_or {

@@ -2,6 +2,7 @@
 
 use super::{MemoryRow, Warning};
 use crate::reduction::AsideReason;
+use crate::verdict::thresholds::UNTESTED_BOUNDLESS;
 use crate::verdict::wording::{
     alternatives, at_most, list, probability, rows, sentence_case, wavelength_with_uncertainty,
 };
@@ -40,6 +41,11 @@ impl Warning {
                 "Exactly {count} readings with strengths and no faintest strength look like a list cut by \
                  count; a line that is not on it may still be there, so the answer is held back."
             ),
+            Self::UntestedCompositions { bound } if *bound > UNTESTED_BOUNDLESS => {
+                "The search was stopped before everything was weighed that may count, which may \
+                 change the answer."
+                    .to_owned()
+            }
             Self::UntestedCompositions { bound } => format!(
                 "Compositions that were not weighed hold {} of the probability, which may change the answer.",
                 at_most(*bound)
