@@ -238,3 +238,33 @@ fn what_cannot_be_enrolled_leaves_no_folder() -> Outcome {
     }
     Ok(())
 }
+
+/// The dark lines of daylight have their handbook places (Fraunhofer's letters, nm, from memory).
+#[test]
+fn fraunhofer_lines_are_where_handbooks_have_them() -> Outcome {
+    let printed = text(&["lines", "--format", "json"])?;
+    let rows: serde_json::Value = serde_json::from_str(&printed)?;
+    let rows = rows.as_array().ok_or("no rows")?;
+    for (letter, nm, emitter, within) in [
+        ("A", 759.37, "O2", 0.8),
+        ("B", 686.72, "O2", 0.7),
+        ("C", 656.28, "H I", 0.01),
+        ("D1", 589.59, "Na I", 0.01),
+        ("D2", 589.00, "Na I", 0.01),
+        ("E", 527.04, "Fe I", 0.01),
+        ("b", 518.36, "Mg I", 0.01),
+        ("F", 486.13, "H I", 0.01),
+        ("G", 430.79, "Fe I", 0.01),
+        ("H", 396.85, "Ca II", 0.01),
+        ("K", 393.37, "Ca II", 0.01),
+    ] {
+        let there = rows.iter().any(|r| {
+            let at = r["wavelength_air_nm"].as_f64().unwrap_or(f64::NAN);
+            r["emitter"] == emitter
+                && r["strength_absorption_dex"].is_number()
+                && (at - nm).abs() <= within
+        });
+        assert!(there, "{letter}: no {emitter} near {nm}");
+    }
+    Ok(())
+}

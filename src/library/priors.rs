@@ -16,7 +16,9 @@ const USUAL_TO_RARE: f64 = 5.0;
 /// and a daylight spectrum or a salt flame before a lamp is taken to be as simple as a flame.
 fn expected_number(source: SourceKind) -> f64 {
     match source {
-        SourceKind::Flame | SourceKind::Absorption => 1.5,
+        SourceKind::Flame => 1.5,
+        // Daylight shows its half dozen usual substances at once.
+        SourceKind::Absorption => 3.5,
         SourceKind::Discharge => 2.5,
     }
 }
@@ -53,7 +55,7 @@ impl Library {
     ///
     /// Ubiquitous .5, background .3. Usual and rare stand 5 : 1 and are scaled so that they sum
     /// to the number of substances expected in one sample (flame 1.5, discharge 2.5, absorption
-    /// 1.5), counting the substances of the whole library that have an emitter in this kind of
+    /// 3.5), counting the substances of the whole library that have an emitter in this kind of
     /// source; each is then capped at .3. What the cap takes off is not given to the others: in a
     /// small library that would lift rare substances to the rank of usual ones. `never` counts as
     /// rare, for such a substance is only weighed where somebody listed it by name. An index

@@ -28,6 +28,7 @@ fn applies(key: &str, source: SourceKind) -> bool {
     match key.split_once('-').map(|(first, _)| first) {
         Some("flame") => source == SourceKind::Flame,
         Some("discharge") => source == SourceKind::Discharge,
+        Some("absorption") => source == SourceKind::Absorption,
         _ => true,
     }
 }
@@ -42,6 +43,8 @@ mod tests {
         assert!(!applies("flame-goggles", SourceKind::Discharge));
         assert!(applies("discharge-high-voltage", SourceKind::Discharge));
         assert!(!applies("discharge-high-voltage", SourceKind::Absorption));
+        assert!(applies("absorption-sun", SourceKind::Absorption));
+        assert!(!applies("absorption-sun", SourceKind::Flame));
         assert!(applies("toxic", SourceKind::Absorption));
     }
 }
