@@ -6,6 +6,8 @@ use super::load::LibraryFault;
 use super::names::closest;
 use super::table::TableFile;
 use super::{Emitter, Library, Source, SourceKind, Substance};
+use rayon::prelude::*;
+use std::collections::BTreeMap;
 
 const TABLES: [&str; 6] = [
     "cautions.csv",
@@ -203,15 +205,25 @@ fn read_features(
     drafts: &mut [DraftSubstance],
     faults: &mut Faults,
 ) {
-    for table in tables {
-        let Some(file) = table.name.strip_prefix("features/") else {
-            continue;
-        };
-        let id = file.rsplit_once('.').map_or(file, |(stem, _)| stem);
-        if let Some(draft) = drafts.iter_mut().find(|d| d.substance.id == id) {
-            draft::features(table, sources, draft, faults);
-            continue;
-        }
+    let named: BTreeMap<&str, &TableFile> = tables
+        .iter()
+        .filter_map(|table| {
+            let file = table.name.strip_prefix("features/")?;
+            Some((file.rsplit_once('.').map_or(file, |(stem, _)| stem), table))
+        })
+        .collect();
+    // Each table fills one substance: they can be read side by side.
+    let mut found: Vec<(&str, Faults)> = drafts
+        .par_iter_mut()
+        .filter_map(|draft| {
+            let table = *named.get(draft.substance.id.as_str())?;
+            let mut own = Faults::new();
+            draft::features(table, sources, draft, &mut own);
+            Some((table.name.as_str(), own))
+        })
+        .collect();
+    let known = |id: &str| drafts.iter().any(|draft| draft.substance.id == id);
+    for (id, table) in named.iter().filter(|(id, _)| !known(id)) {
         let near = closest(id, drafts.iter().map(|d| d.substance.id.as_str()), 1);
         let hint = match near.first() {
             Some(near) => format!("did you mean {near}.csv?"),
@@ -219,8 +231,11 @@ fn read_features(
         };
         let message =
             format!("is named after no substance of the substances.csv beside it ({hint})");
-        faults.push(LibraryFault::of_file(&table.name, &message));
+        let fault = LibraryFault::of_file(&table.name, &message);
+        found.push((table.name.as_str(), vec![fault]));
     }
+    found.sort_by_key(|(name, _)| *name);
+    faults.extend(found.into_iter().flat_map(|(_, own)| own));
 }
 
 /// Substances without emitters, emitters without features, levels without a zero.
