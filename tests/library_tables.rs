@@ -165,7 +165,7 @@ fn the_first_edition_holds_what_it_must() {
     for name in bands.split(';') {
         emitter(name);
     }
-    // The worst near coincidence (library issue; NIST ASD): He 667.815, Ne 667.828.
+    // The worst near coincidence (NIST ASD): He 667.815, Ne 667.828.
     assert!((nearest(emitter("He I"), 667.815).wavelength.nm() - 667.815).abs() < 0.002);
     assert!((nearest(emitter("Ne I"), 667.828).wavelength.nm() - 667.828).abs() < 0.002);
 }
