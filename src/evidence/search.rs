@@ -38,6 +38,8 @@ const PROFILES_LN: f64 = -7.0;
 const BLEND_ALLOWANCE: f64 = 4.0;
 /// Compositions estimated to lie this far below the best serve as a base for estimates as they are.
 const FAR_BEHIND_LN: f64 = -9.0;
+/// Work on the leaders after the search may take the total to this many times its limit.
+const AFTERMATH: f64 = 1.5;
 /// Compositions evaluated per round, whatever the number of threads.
 const BATCH: usize = 8;
 
@@ -98,6 +100,7 @@ pub fn search(stock: &Stock, ln_odds: &[f64]) -> Found {
         singles,
         order,
         nodes: Vec::new(),
+        work: 0.0,
     }
     .run()
 }
@@ -119,6 +122,8 @@ struct Search<'s, 'a> {
     /// (bound on ln gain, candidate), best first.
     order: Vec<(f64, usize)>,
     nodes: Vec<Node>,
+    /// Work so far.
+    work: f64,
 }
 
 impl Search<'_, '_> {
@@ -128,7 +133,7 @@ impl Search<'_, '_> {
         self.insert(Vec::new(), empty, first, Hope::Above(0.0));
         let settings = self.stock.scene.settings;
         let mut bound = f64::INFINITY;
-        while self.nodes.len() < settings.search_limit {
+        while self.may_go_on() {
             let open = self.open_children();
             // While something better may turn up, care for what has been found would be wasted.
             let settled = open.first().is_none_or(|o| o.0 <= self.best());
@@ -141,8 +146,9 @@ impl Search<'_, '_> {
             }
             self.evaluate(&open);
         }
-        while self.refine() {}
-        if self.nodes.len() >= settings.search_limit {
+        // Leaders deserve care even where the search has used up its share.
+        while self.work < AFTERMATH * settings.search_work && self.refine() {}
+        if !self.may_go_on() {
             bound = self.bound(&self.open_children());
         }
         let mut ranked: Vec<(Weighed, f64)> = self
@@ -158,6 +164,11 @@ impl Search<'_, '_> {
             ranked,
             bound: if bound.is_finite() { bound } else { 0.0 },
         }
+    }
+
+    fn may_go_on(&self) -> bool {
+        let settings = self.stock.scene.settings;
+        self.nodes.len() < settings.search_limit && self.work < settings.search_work
     }
 
     /// (bound on ln mass of the child and all below it, node, candidate place), best first.
@@ -209,6 +220,7 @@ impl Search<'_, '_> {
         }
         let weighed: Vec<Weighed> = batch.par_iter().map(|(n, t)| self.child(*n, *t)).collect();
         for ((n, t), weighed) in batch.into_iter().zip(weighed) {
+            self.work += weighed.work;
             let parent = &mut self.nodes[n];
             parent.done[t] = true;
             let mut places = parent.places.clone();
@@ -293,6 +305,7 @@ impl Search<'_, '_> {
             })
             .collect();
         for ((n, _), weighed) in which.into_iter().zip(weighed) {
+            self.work += weighed.work;
             let ln_weight = self.ln_weight(&self.nodes[n].places, &weighed);
             self.nodes[n].ln_weight = ln_weight;
             self.nodes[n].ln_hope = ln_weight;

@@ -55,6 +55,10 @@ pub struct Settings {
     pub search_tolerance: f64,
     /// Most compositions evaluated, whatever the bound; the bound then tells what is left.
     pub search_limit: usize,
+    /// Most work spent on it, in pairs of line and reading times shift nodes times sets of barred members:
+    /// where readings crowd, a single composition can take as long as a hundred others. Counted
+    /// and not timed, so that the answer does not hang on the machine.
+    pub search_work: f64,
 }
 
 impl Default for Settings {
@@ -75,6 +79,7 @@ impl Default for Settings {
             mixture: MixtureRule::Product,
             search_tolerance: 1e-3,
             search_limit: 600,
+            search_work: 2e8,
         }
     }
 }

@@ -69,6 +69,11 @@ pub(super) fn sums(
 }
 
 impl Workspace {
+    /// Pairs of line and reading in the segment realised last.
+    pub fn pairs(&self) -> usize {
+        self.reading.len()
+    }
+
     /// Where readings crowd so much that the sum would take long, leaves out pairs far weaker
     /// than all that could explain the same reading together.
     fn thin(&mut self) {

@@ -32,6 +32,8 @@ pub struct Weighed {
     pub chains: usize,
     /// How closely the amounts were integrated.
     pub care: Care,
+    /// What it took: pairs of line and reading, times shift nodes, times sets of barred members.
+    pub work: f64,
 }
 
 /// How closely the amounts of a composition were integrated.
@@ -96,6 +98,7 @@ pub fn weigh(
             mode: start.to_vec(),
             chains: 0,
             care: Care::Joint,
+            work: 0.0,
         };
     }
     if members.is_empty() {
@@ -109,6 +112,7 @@ pub fn weigh(
             mode: Vec::new(),
             chains: 0,
             care: Care::Joint,
+            work: 0.0,
         };
     }
     let assembly = Assembly::new(stock, members);
@@ -136,6 +140,7 @@ pub fn weigh(
         } else {
             Care::Profiles
         },
+        work: profile.work_done,
     }
 }
 
@@ -175,6 +180,7 @@ pub fn weigh_added(
         mode: profile.latents.clone(),
         chains: assembly.chains,
         care: Care::Added,
+        work: profile.work_done,
     }
 }
 

@@ -43,6 +43,8 @@ pub struct Profile<'s, 'a> {
     pub(super) memo: HashMap<(usize, u64), Value>,
     /// Sums over all segments at `latents`.
     pub(super) totals: Totals,
+    /// See [`super::Weighed::work`].
+    pub(super) work_done: f64,
 }
 
 /// Sums over all segments in one state.
@@ -87,6 +89,7 @@ impl<'s, 'a> Profile<'s, 'a> {
             work: Workspace::default(),
             memo: HashMap::new(),
             totals: Totals::default(),
+            work_done: 0.0,
         };
         if barring {
             profile.doubtful = profile.find_doubtful();
@@ -124,6 +127,7 @@ impl<'s, 'a> Profile<'s, 'a> {
             &mut self.work,
             &mut out,
         );
+        self.work_done += (self.work.pairs() * out.len()) as f64;
         let value = Rc::new((out, missing));
         if without.is_none() {
             self.memo.insert(key, Rc::clone(&value));
