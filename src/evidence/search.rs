@@ -94,13 +94,14 @@ pub fn search(stock: &Stock, ln_odds: &[f64]) -> Found {
         .filter(|(gain, _)| gain.is_finite())
         .collect();
     order.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(&b.1)));
+    let work = singles.iter().map(|single| single.work).sum();
     Search {
         stock,
         ln_odds,
         singles,
         order,
         nodes: Vec::new(),
-        work: 0.0,
+        work,
     }
     .run()
 }

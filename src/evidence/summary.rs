@@ -75,7 +75,9 @@ fn shift_suspected(inference: &Inference, conditions: &Conditions) -> bool {
         .map(|c| c.residual_nm)
         .collect();
     let mean = residuals.iter().sum::<f64>() / residuals.len().max(1) as f64;
-    mean.abs() > limit || inference.offset_nm.mean.abs() > limit || unexplained >= 2
+    // A search that was stopped short says nothing of what is left unexplained.
+    let finished = inference.untested_mass_bound < 1.0;
+    mean.abs() > limit || inference.offset_nm.mean.abs() > limit || (unexplained >= 2 && finished)
 }
 
 fn infer_once(

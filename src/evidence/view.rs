@@ -26,7 +26,14 @@ impl View {
             .iter()
             .flat_map(|s| assembly.causes(stock, s, &weighed.mode, shift, lane))
             .collect();
-        let mut profile = Profile::new(stock, &assembly, weighed.mode.clone(), true);
+        let mut profile = Profile::new(
+            stock,
+            &assembly,
+            weighed.mode.clone(),
+            weighed.shifts_in_use(),
+            Vec::new(),
+        );
+        profile.bar_more();
         let unexplained = profile.unexplained(&weighed.nodes);
         Self {
             members: weighed.members.clone(),

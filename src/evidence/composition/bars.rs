@@ -11,7 +11,7 @@ const MOST_BARRED: usize = 6;
 
 impl Profile<'_, '_> {
     /// Bars members that became doubtful at the present state; says whether there were any.
-    pub(super) fn bar_more(&mut self) -> bool {
+    pub fn bar_more(&mut self) -> bool {
         let mut all = self.find_doubtful();
         all.retain(|m| !self.doubtful.contains(m));
         all.truncate(MOST_BARRED.saturating_sub(self.doubtful.len()));

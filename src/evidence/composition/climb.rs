@@ -17,7 +17,7 @@ impl Profile<'_, '_> {
     pub fn climb(&mut self) {
         const MOST_SWEEPS: usize = 8;
         self.choose_start();
-        self.drop_shifts(HOPELESS_LN);
+        self.drop_hopeless();
         for _ in 0..MOST_SWEEPS {
             let mut moved = false;
             for m in 0..self.assembly.members.len() {
@@ -122,6 +122,11 @@ impl Profile<'_, '_> {
         self.latents = best.1;
         self.settle();
         true
+    }
+
+    /// Leaves out shifts that no amounts could make count.
+    pub(super) fn drop_hopeless(&mut self) {
+        self.drop_shifts(HOPELESS_LN);
     }
 
     /// Leaves out shifts that carry nothing at the present state.

@@ -179,9 +179,11 @@ impl Profile<'_, '_> {
     }
 
     /// The combinations of amounts that count: outwards from the mode, as far as the integrand
-    /// has not fallen too far. None where they are too many.
+    /// has not fallen too far. None where they are too many, or too dear where readings crowd.
     pub(super) fn joint_points(&mut self) -> Option<Vec<(Vec<usize>, Point)>> {
         const MOST_POINTS: usize = 1024;
+        const MOST_WORK: f64 = 1e7;
+        let dearest = self.work_done + MOST_WORK;
         let count = self.stock.scene.amount.len();
         let mode: Vec<usize> = self.latents.iter().map(|l| l.amount).collect();
         let mut met: BTreeSet<Vec<usize>> = BTreeSet::from([mode.clone()]);
@@ -197,7 +199,7 @@ impl Profile<'_, '_> {
                 open.extend(neighbours(&amounts, count).filter(|n| met.insert(n.clone())));
             }
             points.push((amounts, point));
-            if points.len() > MOST_POINTS {
+            if points.len() > MOST_POINTS || self.work_done > dearest {
                 return None;
             }
         }

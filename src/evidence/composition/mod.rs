@@ -36,6 +36,15 @@ pub struct Weighed {
     pub work: f64,
 }
 
+impl Weighed {
+    /// Shift nodes that were not left out.
+    pub fn shifts_in_use(&self) -> Vec<usize> {
+        (0..self.mode_ln.len())
+            .filter(|d| self.mode_ln[*d].iter().any(|ln| ln.is_finite()))
+            .collect()
+    }
+}
+
 /// How closely the amounts of a composition were integrated.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
 pub enum Care {
@@ -116,9 +125,14 @@ pub fn weigh(
         };
     }
     let assembly = Assembly::new(stock, members);
-    let mut profile = Profile::new(stock, &assembly, start.to_vec(), barring);
+    let all = (0..stock.scene.offset.len()).collect();
+    let mut profile = Profile::new(stock, &assembly, start.to_vec(), all, Vec::new());
     let nodes = match stock.scene.settings.mixture {
         MixtureRule::Product => {
+            profile.drop_hopeless();
+            if barring {
+                profile.bar_more();
+            }
             profile.climb();
             // Away from the start other members may be in doubt.
             if barring && profile.bar_more() {
@@ -156,13 +170,13 @@ pub fn weigh_added(
     newest: usize,
 ) -> Weighed {
     let assembly = Assembly::new(stock, members);
-    let mut profile = Profile::new(stock, &assembly, start.to_vec(), false);
-    profile.shifts = (0..base.nodes.len())
-        .filter(|d| base.mode_ln[*d][0].is_finite())
-        .collect();
-    profile.doubtful = vec![newest];
-    profile.place_bars();
-    profile.refresh();
+    let mut profile = Profile::new(
+        stock,
+        &assembly,
+        start.to_vec(),
+        base.shifts_in_use(),
+        vec![newest],
+    );
     profile.jump(newest);
     let mode: Slice = profile.shifts.iter().map(|d| base.mode_ln[*d]).collect();
     let mut added = profile.member_profile(newest, &mode);

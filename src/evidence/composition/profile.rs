@@ -57,12 +57,14 @@ pub(super) struct Totals {
 }
 
 impl<'s, 'a> Profile<'s, 'a> {
-    /// Evaluates the starting state; decides which members have to be barred in turn.
+    /// Evaluates the starting state, at the given shift nodes, with each of `doubtful` barred in
+    /// turn beside it.
     pub fn new(
         stock: &'s Stock<'a>,
         assembly: &'s Assembly,
         latents: Vec<Latent>,
-        barring: bool,
+        shifts: Vec<usize>,
+        doubtful: Vec<usize>,
     ) -> Self {
         let count = assembly.members.len();
         let by_member = (0..count)
@@ -80,8 +82,8 @@ impl<'s, 'a> Profile<'s, 'a> {
             stock,
             assembly,
             latents,
-            doubtful: Vec::new(),
-            shifts: (0..stock.scene.offset.len()).collect(),
+            doubtful,
+            shifts,
             local_bars: vec![Vec::new(); assembly.segments.len()],
             values: Vec::new(),
             by_member,
@@ -91,10 +93,7 @@ impl<'s, 'a> Profile<'s, 'a> {
             totals: Totals::default(),
             work_done: 0.0,
         };
-        if barring {
-            profile.doubtful = profile.find_doubtful();
-            profile.place_bars();
-        }
+        profile.place_bars();
         profile.refresh();
         profile
     }
