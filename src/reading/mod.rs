@@ -4,6 +4,8 @@
 //! they were written in and [`crate::reduction`] turns them into air
 //! wavelengths.
 
+mod cell;
+mod column;
 mod decode;
 mod header;
 mod number;
@@ -12,6 +14,7 @@ mod quote;
 mod records;
 mod row;
 mod table;
+mod unit;
 
 pub use quote::{escape_control, quoted, shorten};
 pub use table::read_table;

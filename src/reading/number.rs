@@ -1,6 +1,6 @@
 //! Numbers as people and spreadsheets write them: either decimal sign, an exponent, a unit behind.
 
-use super::header::Unit;
+use super::unit::Unit;
 
 /// What a cell that should hold a number holds.
 #[derive(Debug, Clone, Copy, PartialEq)]

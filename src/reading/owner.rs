@@ -1,6 +1,7 @@
 //! Which sample a row belongs to, also where the row is damaged.
 
-use super::header::{Column, Header};
+use super::column::Column;
+use super::header::Header;
 use super::quote::{clean_name, escape_control};
 use super::records::Record;
 use std::collections::BTreeSet;

@@ -1,12 +1,14 @@
 //! Reading a table of readings: every fault found in one run.
 
+use super::cell::Notation;
+use super::column::Column;
 use super::decode::decode;
-use super::header::{Column, Header, read_header, recognised};
+use super::header::{Header, read_header, recognised};
 use super::number::{Shape, may_be_grouped, shape, split_unit};
 use super::owner::Owners;
 use super::quote::{quoted, shorten};
 use super::records::{Record, split};
-use super::row::{Notation, read_row};
+use super::row::read_row;
 use super::{Dialect, Reading, Refusal, Sample, Strength, Table};
 use sha2::{Digest, Sha256};
 use std::collections::{BTreeSet, HashMap};

@@ -37,6 +37,35 @@ pub struct Weighed {
 }
 
 impl Weighed {
+    /// A composition with the same ln E* at every node, without integration.
+    fn settled(stock: &Stock, members: &[usize], mode: &[Latent], ln: f64) -> Self {
+        let nodes = vec![[ln; LANES]; stock.scene.offset.len()];
+        Self {
+            members: members.to_vec(),
+            ln_evidence: ln_total(stock, &nodes),
+            mode_ln: nodes.clone(),
+            nodes,
+            mode: mode.to_vec(),
+            chains: 0,
+            care: Care::Joint,
+            work: 0.0,
+        }
+    }
+
+    /// A composition integrated about the state of `profile`.
+    fn at_mode(profile: &Profile, members: &[usize], nodes: Slice, care: Care) -> Self {
+        Self {
+            members: members.to_vec(),
+            ln_evidence: ln_total(profile.stock, &nodes),
+            nodes,
+            mode_ln: profile.ln_unbarred(),
+            mode: profile.latents.clone(),
+            chains: profile.assembly.chains,
+            care,
+            work: profile.work_done,
+        }
+    }
+
     /// Shift nodes that were not left out.
     pub fn shifts_in_use(&self) -> Vec<usize> {
         (0..self.mode_ln.len())
@@ -96,33 +125,11 @@ pub fn weigh(
     barring: bool,
     joint: bool,
 ) -> Weighed {
-    let hopeless = barring && members.iter().any(|m| stock.prepared[*m].pairs.is_empty());
-    if hopeless {
-        let nodes = vec![[f64::NEG_INFINITY; LANES]; stock.scene.offset.len()];
-        return Weighed {
-            members: members.to_vec(),
-            ln_evidence: f64::NEG_INFINITY,
-            mode_ln: nodes.clone(),
-            nodes,
-            mode: start.to_vec(),
-            chains: 0,
-            care: Care::Joint,
-            work: 0.0,
-        };
+    if barring && members.iter().any(|m| stock.prepared[*m].pairs.is_empty()) {
+        return Weighed::settled(stock, members, start, f64::NEG_INFINITY);
     }
     if members.is_empty() {
-        let nodes = vec![[0.0; LANES]; stock.scene.offset.len()];
-        let ln_evidence = ln_total(stock, &nodes);
-        return Weighed {
-            members: Vec::new(),
-            ln_evidence,
-            mode_ln: nodes.clone(),
-            nodes,
-            mode: Vec::new(),
-            chains: 0,
-            care: Care::Joint,
-            work: 0.0,
-        };
+        return Weighed::settled(stock, members, start, 0.0);
     }
     let assembly = Assembly::new(stock, members);
     let all = (0..stock.scene.offset.len()).collect();
@@ -142,20 +149,11 @@ pub fn weigh(
         }
         MixtureRule::Joint => profile.joint(barring),
     };
-    Weighed {
-        members: members.to_vec(),
-        ln_evidence: ln_total(stock, &nodes),
-        nodes,
-        mode_ln: profile.ln_unbarred(),
-        mode: profile.latents.clone(),
-        chains: assembly.chains,
-        care: if joint || members.len() == 1 {
-            Care::Joint
-        } else {
-            Care::Profiles
-        },
-        work: profile.work_done,
-    }
+    let care = match joint || members.len() == 1 {
+        true => Care::Joint,
+        false => Care::Profiles,
+    };
+    Weighed::at_mode(&profile, members, nodes, care)
 }
 
 /// Adds one member to a composition without moving the others from their mode: a first, cheap
@@ -186,16 +184,7 @@ pub fn weigh_added(
         }
     }
     let nodes = profile.spread(added);
-    Weighed {
-        members: members.to_vec(),
-        ln_evidence: ln_total(stock, &nodes),
-        nodes,
-        mode_ln: profile.ln_unbarred(),
-        mode: profile.latents.clone(),
-        chains: assembly.chains,
-        care: Care::Added,
-        work: profile.work_done,
-    }
+    Weighed::at_mode(&profile, members, nodes, Care::Added)
 }
 
 /// A middling state to begin from.

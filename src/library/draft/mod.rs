@@ -1,38 +1,39 @@
 //! The rows of each table as they are read, and what can be said against a single row.
 
+mod features;
+
+pub(super) use features::features;
+
 use super::layout::{
-    CAUTIONS, COMPLETE_TO_DEX, COMPOSED, DEGRADES, EMITTER_KINDS, EMITTERS, ENERGY_PER_CM,
-    FEATURES, FORMS, LEVEL_DEX, LEVEL_SPREAD_DEX, LISTS, PERSISTENT, POSITIVE, PRIOR_CLASSES,
-    SCATTER_DEX, SHOWS, SOURCE_KINDS, SOURCES, STANDINGS, STRENGTH_DEX, SUBSTANCE_KINDS,
-    SUBSTANCES, UNCERTAINTY_NM, WAVELENGTH_NM, WIDTH_NM,
+    CAUTIONS, COMPLETE_TO_DEX, COMPOSED, EMITTER_KINDS, EMITTERS, LEVEL_DEX, LEVEL_SPREAD_DEX,
+    LISTS, PRIOR_CLASSES, SHOWS, SOURCE_KINDS, SOURCES, STANDINGS, SUBSTANCE_KINDS, SUBSTANCES,
 };
 use super::load::LibraryFault;
 use super::table::{Cell, Row, TableFile, read};
-use super::{Composed, Emitter, Excitation, Feature, Source, Substance, SubstanceKind};
-use crate::reduction::air::AirWavelength;
+use super::{Composed, Emitter, Excitation, Source, Substance, SubstanceKind};
 use std::collections::HashMap;
 
 /// A row that became something, with the line it stands on.
-pub(super) struct Placed<T> {
-    pub(super) line: usize,
-    pub(super) value: T,
+pub(in crate::library) struct Placed<T> {
+    pub(in crate::library) line: usize,
+    pub(in crate::library) value: T,
 }
 
 /// An emitter with the lines of its rows in `emitters.csv`.
-pub(super) struct DraftEmitter {
-    pub(super) emitter: Emitter,
-    pub(super) lines: [Option<usize>; 3],
+pub(in crate::library) struct DraftEmitter {
+    pub(in crate::library) emitter: Emitter,
+    pub(in crate::library) lines: [Option<usize>; 3],
 }
 
 /// A substance whose emitters are still being collected.
-pub(super) struct DraftSubstance {
-    pub(super) line: usize,
-    pub(super) substance: Substance,
-    pub(super) emitters: Vec<DraftEmitter>,
+pub(in crate::library) struct DraftSubstance {
+    pub(in crate::library) line: usize,
+    pub(in crate::library) substance: Substance,
+    pub(in crate::library) emitters: Vec<DraftEmitter>,
 }
 
 /// Keys of what may be referred to, with the index each stands for.
-pub(super) type Keys = HashMap<String, usize>;
+pub(in crate::library) type Keys = HashMap<String, usize>;
 
 type Faults = Vec<LibraryFault>;
 
@@ -51,7 +52,10 @@ fn first_of_its_kind<K: std::hash::Hash + Eq>(
     true
 }
 
-pub(super) fn sources(table: &TableFile<'_>, faults: &mut Faults) -> Vec<Placed<Source>> {
+pub(in crate::library) fn sources(
+    table: &TableFile<'_>,
+    faults: &mut Faults,
+) -> Vec<Placed<Source>> {
     let (mut rows, mut seen) = (Vec::new(), HashMap::new());
     read(
         table,
@@ -76,7 +80,10 @@ pub(super) fn sources(table: &TableFile<'_>, faults: &mut Faults) -> Vec<Placed<
     rows
 }
 
-pub(super) fn cautions(table: &TableFile<'_>, faults: &mut Faults) -> Vec<(String, String)> {
+pub(in crate::library) fn cautions(
+    table: &TableFile<'_>,
+    faults: &mut Faults,
+) -> Vec<(String, String)> {
     let (mut rows, mut seen) = (Vec::new(), HashMap::new());
     read(table, &CAUTIONS, faults, |[key, text], row| {
         let caution = (row.filled(key).to_owned(), row.filled(text).to_owned());
@@ -87,7 +94,7 @@ pub(super) fn cautions(table: &TableFile<'_>, faults: &mut Faults) -> Vec<(Strin
     rows
 }
 
-pub(super) fn substances(
+pub(in crate::library) fn substances(
     table: &TableFile<'_>,
     cautions: &[(String, String)],
     faults: &mut Faults,
@@ -153,7 +160,7 @@ fn owned(texts: Vec<&str>) -> Vec<String> {
 }
 
 /// Reads `emitters.csv` into the substances it names.
-pub(super) fn emitters(
+pub(in crate::library) fn emitters(
     table: &TableFile<'_>,
     sources: &Keys,
     substances: &mut [DraftSubstance],
@@ -261,114 +268,12 @@ fn resolve(row: &mut Row<'_>, cell: Cell<'_>, keys: &Keys, what: &str) -> Vec<us
     indices
 }
 
-/// Reads `features/<substance>.csv` into the emitters of that substance.
-pub(super) fn features(
-    table: &TableFile<'_>,
-    sources: &Keys,
-    draft: &mut DraftSubstance,
-    faults: &mut Faults,
-) {
-    let mut previous_nm = WAVELENGTH_NM.low;
-    let known = format!("an emitter of {} in emitters.csv", draft.substance.id);
-    read(table, &FEATURES, faults, |cells, row| {
-        let [emitter, form, wavelength, ..] = cells;
-        // A wavelength that is no number says nothing of the order.
-        let nm = (row.sound_number(wavelength, WAVELENGTH_NM)).unwrap_or(previous_nm);
-        if nm < previous_nm {
-            row.fault(
-                wavelength,
-                format!("comes after {previous_nm} (sort by wavelength)"),
-            );
-        }
-        previous_nm = nm;
-        let feature = feature(cells, nm, sources, row);
-        let home = (draft.emitters.iter_mut()).find(|e| e.emitter.name == emitter.text);
-        let Some(home) = home else {
-            let names = draft.emitters.iter().map(|e| e.emitter.name.as_str());
-            row.unresolved(emitter, emitter.text, &known, names);
-            return;
-        };
-        let Some(feature) = feature else { return };
-        let twin = (home.emitter.features.iter().rev())
-            .take_while(|f| f.wavelength.nm() == nm)
-            .find(|f| f.form == feature.form);
-        match twin {
-            Some(twin) => row.fault(
-                form,
-                format!("stands at this wavelength already in row {}", twin.row),
-            ),
-            None => home.emitter.features.push(feature),
-        }
-    });
-}
-
-fn feature(
-    cells: [Cell<'_>; FEATURES.len()],
-    nm: f64,
-    sources: &Keys,
-    row: &mut Row<'_>,
-) -> Option<Feature> {
-    let [
-        _,
-        form,
-        wavelength,
-        uncertainty,
-        degrades,
-        width,
-        flame,
-        discharge,
-        absorption,
-        scatter,
-        persistent,
-        rate,
-        weight,
-        lower,
-        upper,
-        from,
-        strength_from,
-        note,
-    ] = cells;
-    let strength_dex =
-        [flame, discharge, absorption].map(|cell| row.number_if_any(cell, STRENGTH_DEX));
-    if strength_dex == [None; 3] {
-        row.fault(
-            flame,
-            "is empty, as are the others (a feature has a strength in some kind of source)",
-        );
-    }
-    let lower_level_per_cm = row.number_if_any(lower, ENERGY_PER_CM);
-    let upper_level_per_cm = row.number_if_any(upper, ENERGY_PER_CM);
-    if let (Some(low), Some(high)) = (lower_level_per_cm, upper_level_per_cm)
-        && low >= high
-    {
-        row.fault(upper, format!("is not above the lower level {low}"));
-    }
-    let Some(wavelength) = AirWavelength::new(nm) else {
-        row.fault(wavelength, "is not a wavelength in air");
-        return None;
-    };
-    Some(Feature {
-        form: row.word(form, &FORMS),
-        wavelength,
-        uncertainty_nm: row.number(uncertainty, UNCERTAINTY_NM),
-        degrades: row.word(degrades, &DEGRADES).map(str::to_owned),
-        width_nm: row.number_if_any(width, WIDTH_NM),
-        strength_dex,
-        scatter_dex: row.number(scatter, SCATTER_DEX),
-        persistent: row.word(persistent, &PERSISTENT),
-        transition_rate_per_s: row.number_if_any(rate, POSITIVE),
-        upper_weight: row.number_if_any(weight, POSITIVE),
-        lower_level_per_cm,
-        upper_level_per_cm,
-        source_position: resolve(row, from, sources, "a key of sources.csv"),
-        source_strength: resolve(row, strength_from, sources, "a key of sources.csv"),
-        note: note.text.to_owned(),
-        row: row.line,
-    })
-}
-
 /// Reads `composed.csv`; parts must be among the substance ids.
-pub(super) fn composed(table: &TableFile<'_>, ids: &Keys, faults: &mut Faults) -> Vec<Composed> {
+pub(in crate::library) fn composed(
+    table: &TableFile<'_>,
+    ids: &Keys,
+    faults: &mut Faults,
+) -> Vec<Composed> {
     let (mut rows, mut seen) = (Vec::new(), HashMap::new());
     read(table, &COMPOSED, faults, |[name, parts, where_met], row| {
         row.filled(parts);
@@ -394,7 +299,7 @@ pub(super) fn composed(table: &TableFile<'_>, ids: &Keys, faults: &mut Faults) -
 }
 
 /// Reads `lists.csv` into lists in order of first appearance.
-pub(super) fn lists(
+pub(in crate::library) fn lists(
     table: &TableFile<'_>,
     ids: &Keys,
     faults: &mut Faults,

@@ -5,10 +5,14 @@
 //! unevaluated when that is small. What adding s gained elsewhere bounds what it can gain here:
 //! the more substances compete for the readings, the less another one adds.
 
+mod learn;
+mod node;
+
 use super::assembly::{Latent, Stock};
-use super::composition::{Care, Weighed, ln_total, middle, weigh, weigh_added};
+use super::composition::{Care, Weighed, middle, weigh, weigh_added};
 use super::density::ln_sum_exp;
-use super::matching::LANES;
+use learn::subset;
+use node::{Hope, Node};
 use rayon::prelude::*;
 
 /// Compositions that were evaluated, and the bound on the rest.
@@ -20,66 +24,20 @@ pub struct Found {
     pub bound: f64,
 }
 
-/// Nats allowed for what the bound does not prove: amounts shifting when substances are added.
-const AMOUNT_MARGIN: f64 = 0.5;
-/// Nats allowed per chain of blending lines, where the bound does not hold.
-const CHAIN_MARGIN: f64 = 0.25;
-/// Most nats allowed for chains together.
-const CHAIN_MARGIN_MOST: f64 = 1.0;
-/// Shift nodes further than this below the best do not bound gains.
-const RELEVANT_LN: f64 = -8.0;
+/// Nats by which an estimate can be too low where new lines blend: who owns a blend changes with
+/// the amounts, which the estimate holds fixed.
+const BLEND_ALLOWANCE: f64 = 4.0;
 /// Compositions estimated to lie this far below the best, in nats, keep the estimate.
 const ROUGH_LN: f64 = -9.0;
 /// Compositions this far below the best keep the product of profiles, which lines that blend can
 /// make too small by up to three nats.
 const PROFILES_LN: f64 = -7.0;
-/// Nats by which an estimate can be too low where new lines blend: who owns a blend changes with
-/// the amounts, which the estimate holds fixed.
-const BLEND_ALLOWANCE: f64 = 4.0;
 /// Compositions estimated to lie this far below the best serve as a base for estimates as they are.
 const FAR_BEHIND_LN: f64 = -9.0;
 /// Work on the leaders after the search may take the total to this many times its limit.
 const AFTERMATH: f64 = 1.5;
 /// Compositions evaluated per round, whatever the number of threads.
 const BATCH: usize = 8;
-
-struct Node {
-    /// Positions in `Search::order`, ascending.
-    places: Vec<usize>,
-    weighed: Weighed,
-    ln_weight: f64,
-    /// What the weight may turn out to be; the weight itself unless it was only estimated.
-    ln_hope: f64,
-    /// Bound on ln of the factor that adding each candidate can bring.
-    gain: Vec<f64>,
-    /// Whether the child by each candidate has been evaluated.
-    done: Vec<bool>,
-}
-
-impl Node {
-    /// An estimate that found nothing, although blends may hide something.
-    fn is_hidden(&self) -> bool {
-        self.ln_weight == f64::NEG_INFINITY && self.ln_hope > self.ln_weight
-    }
-
-    /// ln weight to count on.
-    fn expected(&self) -> f64 {
-        if self.is_hidden() {
-            self.ln_hope
-        } else {
-            self.ln_weight
-        }
-    }
-}
-
-/// How much more than its estimate a composition may weigh.
-#[derive(Debug, Clone, Copy)]
-enum Hope {
-    /// So many nats above the estimate.
-    Above(f64),
-    /// So much in all.
-    AtMost(f64),
-}
 
 /// Searches all compositions of the candidates.
 pub fn search(stock: &Stock, ln_odds: &[f64]) -> Found {
@@ -366,65 +324,4 @@ impl Search<'_, '_> {
         });
         self.learn(self.nodes.len() - 1);
     }
-
-    /// What each member gained over an evaluated composition without it bounds what it can gain
-    /// over any larger one.
-    fn learn(&mut self, newest: usize) {
-        if self.nodes[newest].is_hidden() {
-            return;
-        }
-        let places = self.nodes[newest].places.clone();
-        for x in &places {
-            let rest: Vec<usize> = places.iter().copied().filter(|p| p != x).collect();
-            let Some(base) = self.nodes.iter().position(|n| n.places == rest) else {
-                continue;
-            };
-            let Some(gained) = self.gained(base, newest) else {
-                continue;
-            };
-            let new = &self.nodes[newest];
-            let chains =
-                new.weighed.chains - self.nodes[base].weighed.chains.min(new.weighed.chains);
-            let blends = match new.weighed.care {
-                Care::Added if chains > 0 => BLEND_ALLOWANCE,
-                _ => (CHAIN_MARGIN * chains as f64).min(CHAIN_MARGIN_MOST),
-            };
-            let margin = AMOUNT_MARGIN + blends;
-            let limit = gained + self.ln_odds[self.order[*x].1] + margin;
-            for node in &mut self.nodes {
-                if subset(&rest, &node.places) {
-                    node.gain[*x] = node.gain[*x].min(limit);
-                }
-            }
-        }
-    }
-
-    /// Largest ln E*(with) − ln E*(base) over the shift nodes and lanes that matter to `base`.
-    fn gained(&self, base: usize, with: usize) -> Option<f64> {
-        let (base, with) = (&self.nodes[base].weighed, &self.nodes[with].weighed);
-        if base.ln_evidence == f64::NEG_INFINITY {
-            return None;
-        }
-        let scene = &self.stock.scene;
-        let total = ln_total(self.stock, &base.nodes);
-        let mut most = f64::NEG_INFINITY;
-        for ((b, w), weight) in base
-            .nodes
-            .iter()
-            .zip(&with.nodes)
-            .zip(scene.offset.weights())
-        {
-            for l in 0..LANES {
-                let mass = b[l] + weight.ln() + self.stock.lane_ln_weight[l] - total;
-                if mass > RELEVANT_LN {
-                    most = most.max(w[l] - b[l]);
-                }
-            }
-        }
-        Some(most)
-    }
-}
-
-fn subset(small: &[usize], large: &[usize]) -> bool {
-    small.iter().all(|x| large.binary_search(x).is_ok())
 }
