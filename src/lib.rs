@@ -1,7 +1,7 @@
 //! Linstock tells what a flame or a discharge lamp contains from measured emission lines.
 //!
 //! ```
-//! use linstock::{library, reading, setup, verdict};
+//! use linstock::{embedded, reading, setup, verdict};
 //!
 //! # fn main() -> Result<(), Box<dyn std::error::Error>> {
 //! let table = reading::read_table(
@@ -14,7 +14,7 @@
 //!     std::path::Path::new("."),
 //! )?;
 //! let setup = setup::resolve(Some(file), setup::SetupOverrides::default())?;
-//! let library = library::embedded()?;
+//! let library = embedded::library()?;
 //! let shortlist = verdict::shortlist(&library, &setup)?;
 //! let found = verdict::identify_sample(&library, &setup, &shortlist, &table.samples[0])?;
 //! let leader = &found.verdict.compositions[0];
@@ -43,6 +43,10 @@ pub mod setup;
 pub mod reduction;
 
 pub mod library;
+
+pub mod embedded;
+
+pub mod enrolment;
 
 pub mod evidence;
 

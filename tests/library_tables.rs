@@ -1,7 +1,8 @@
 //! Guards of the reference tables that are part of the program: what the loader does not check,
 //! and each number that has an outside against that outside.
 
-use linstock::library::{Emitter, Feature, Form, Library, SourceKind, Standing, embedded};
+use linstock::embedded;
+use linstock::library::{Emitter, Feature, Form, Library, SourceKind, Standing};
 use linstock::reduction::air::VacuumWavelength;
 use std::path::Path;
 use std::sync::OnceLock;
@@ -19,7 +20,7 @@ const BOLTZMANN_PER_CM: f64 = 0.695_034_800;
 
 fn library() -> &'static Library {
     static LIBRARY: OnceLock<Library> = OnceLock::new();
-    LIBRARY.get_or_init(|| embedded().unwrap_or_else(|error| panic!("{error}")))
+    LIBRARY.get_or_init(|| embedded::library().unwrap_or_else(|error| panic!("{error}")))
 }
 
 fn emitters() -> impl Iterator<Item = &'static Emitter> {

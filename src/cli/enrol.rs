@@ -3,7 +3,8 @@
 use super::Failure;
 use super::inputs::{Inputs, read_inputs};
 use super::options::{LibraryOptions, SetupOptions};
-use crate::library::{Enrolment, Library, SourceKind, enrol, extend_with, identifier, read_tables};
+use crate::enrolment::{Enrolment, enrol, identifier};
+use crate::library::{Library, SourceKind, extend_with, read_tables};
 use crate::reading::{Sample, Table};
 use crate::reduction::reduce;
 use crate::report::catalogue::cautions_text;

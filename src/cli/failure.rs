@@ -1,7 +1,8 @@
 //! What keeps a command from giving a report.
 
 use super::Exit;
-use crate::library::{EnrolError, LibraryError};
+use crate::enrolment::EnrolError;
+use crate::library::LibraryError;
 use crate::setup::SetupError;
 use crate::store::StoreError;
 use crate::verdict::ShortlistError;

@@ -3,7 +3,8 @@
 use super::enrol;
 use super::options::LibraryOptions;
 use super::{Exit, Failure};
-use crate::library::{Library, embedded, extend_from, load_folder};
+use crate::embedded;
+use crate::library::{Library, extend_from, load_folder};
 use crate::report::catalogue::{
     Within, catalogue_json, features, lines_csv, lines_text, list_csv, list_text, listed,
     page_text, substance_page,
@@ -177,7 +178,7 @@ fn check(options: &CheckOptions) -> Result<(), Failure> {
     let library = if options.alone {
         load_folder(&options.folder)?
     } else {
-        extend_from(embedded()?, &options.folder)?
+        extend_from(embedded::library()?, &options.folder)?
     };
     let features: usize = library
         .substances

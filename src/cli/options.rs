@@ -1,7 +1,8 @@
 //! Options that several commands share: the set-up and the library.
 
 use super::Failure;
-use crate::library::{Library, SourceKind, embedded, extend_from, load_folder};
+use crate::embedded;
+use crate::library::{Library, SourceKind, extend_from, load_folder};
 use crate::setup::{
     Candidates, InstrumentKind, Medium, NamedResponse, Setup, SetupOverrides, read_setup, resolve,
 };
@@ -149,7 +150,7 @@ impl LibraryOptions {
         if let Some(path) = &self.library_only {
             return Ok(load_folder(path)?);
         }
-        let base = embedded()?;
+        let base = embedded::library()?;
         Ok(match setup.library() {
             Some(path) => extend_from(base, path)?,
             None => base,
@@ -163,7 +164,7 @@ impl LibraryOptions {
         if let Some(path) = &self.library_only {
             return Ok(load_folder(path)?);
         }
-        let base = embedded()?;
+        let base = embedded::library()?;
         Ok(match &self.library {
             Some(path) => extend_from(base, path)?,
             None => base,

@@ -1,18 +1,18 @@
-//! Loading a library: the embedded one, a folder on its own, or a folder laid over another library.
+//! Loading a library: a folder on its own, or a folder laid over another library.
 //!
 //! A folder is used whole or refused; every fault in it is reported in one run.
 
 use super::Library;
 use super::assemble::assemble;
-use super::enrol::Tables;
 use super::table::TableFile;
-use include_dir::{Dir, include_dir};
 use sha2::{Digest, Sha256};
 use std::borrow::Cow;
+use std::collections::BTreeMap;
 use std::fmt;
 use std::path::{Path, PathBuf};
 
-static EMBEDDED: Dir<'_> = include_dir!("$CARGO_MANIFEST_DIR/library");
+/// The tables of a library folder by name within it.
+pub type Tables = BTreeMap<String, String>;
 
 /// One thing wrong with a library folder.
 #[derive(Debug, Clone, PartialEq, Eq)]
@@ -93,18 +93,6 @@ fn listed(faults: &[LibraryFault]) -> String {
         text.push_str(&format!("\n  and {} more", faults.len() - SHOWN));
     }
     text
-}
-
-/// The library that is part of the program.
-///
-/// # Errors
-/// [`LibraryError::Faulty`] if the embedded tables are inconsistent, which the tests rule out.
-pub fn embedded() -> Result<Library, LibraryError> {
-    let tables = embedded_tables();
-    assemble(None, &tables, digest(None, &tables)).map_err(|faults| LibraryError::Faulty {
-        name: "embedded".to_owned(),
-        faults,
-    })
 }
 
 /// A library made of one folder alone.
@@ -199,24 +187,6 @@ fn digest(base: Option<&Library>, tables: &[TableFile<'_>]) -> String {
         .iter()
         .map(|byte| format!("{byte:02x}"))
         .collect()
-}
-
-fn embedded_tables() -> Vec<TableFile<'static>> {
-    let features = EMBEDDED
-        .get_dir("features")
-        .into_iter()
-        .flat_map(Dir::files);
-    let mut tables: Vec<_> = EMBEDDED
-        .files()
-        .chain(features)
-        .filter(|file| is_table(file.path()))
-        .map(|file| TableFile {
-            name: file.path().to_string_lossy().replace('\\', "/"),
-            bytes: Cow::Borrowed(file.contents()),
-        })
-        .collect();
-    tables.sort_by(|a, b| a.name.cmp(&b.name));
-    tables
 }
 
 /// The tables of a folder: `*.csv` in it and in its `features/`, sorted by name.

@@ -3,16 +3,14 @@
 
 mod assemble;
 mod draft;
-mod enrol;
 mod layout;
 mod load;
 mod names;
 mod priors;
 mod table;
 
-pub use enrol::{EnrolError, Enrolment, Tables, enrol, identifier};
 pub use load::{
-    LibraryError, LibraryFault, embedded, extend_from, extend_with, load_folder, read_tables,
+    LibraryError, LibraryFault, Tables, extend_from, extend_with, load_folder, read_tables,
 };
 pub use names::NameError;
 pub use priors::Selection;
@@ -115,7 +113,7 @@ pub enum Standing {
 }
 
 /// A source of values.
-#[derive(Debug, Clone, PartialEq, Eq)]
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
 pub struct Source {
     /// Key used in the tables.
     pub key: String,
@@ -130,7 +128,7 @@ pub struct Source {
 }
 
 /// A line or a band feature.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Feature {
     /// Line, band head or band maximum.
     pub form: Form,
@@ -169,7 +167,7 @@ pub struct Feature {
 }
 
 /// An emitter in one kind of source.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Excitation {
     /// Chance that this kind of source lifts the emitter above threshold at all.
     pub shows: f64,
@@ -186,7 +184,7 @@ pub struct Excitation {
 }
 
 /// An emitter (`Ca I`, `CaOH`) with its features.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Emitter {
     /// Name as spectroscopists write it.
     pub name: String,
@@ -199,7 +197,7 @@ pub struct Emitter {
 }
 
 /// Something a report may name.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Substance {
     /// Stable identifier, a lower-case English name.
     pub id: String,
@@ -224,7 +222,7 @@ pub struct Substance {
 }
 
 /// A name for a finding made of several substances.
-#[derive(Debug, Clone, PartialEq, Eq)]
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
 pub struct Composed {
     /// Name for reports.
     pub name: String,
@@ -235,7 +233,7 @@ pub struct Composed {
 }
 
 /// A loaded, consistent reference library.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Library {
     /// Substances, sorted by id.
     pub substances: Vec<Substance>,

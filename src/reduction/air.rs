@@ -3,6 +3,7 @@
 //! The library and the model work in standard air: dry, 15 °C, 101325 Pa, 450 ppm CO₂.
 //! Wavenumbers are vacuum by definition.
 
+use serde::{Deserialize, Serialize};
 use std::ops::RangeInclusive;
 
 /// Wavelengths that can be held, nm.
@@ -14,7 +15,8 @@ pub const RANGE_NM: RangeInclusive<f64> = 100.0..=20_000.0;
 const INDEX_HELD_BELOW_NM: f64 = 200.0;
 
 /// A wavelength in standard air (15 °C, 101325 Pa, dry, 450 ppm CO₂), nm.
-#[derive(Debug, Clone, Copy, PartialEq, PartialOrd)]
+#[derive(Debug, Clone, Copy, PartialEq, PartialOrd, Serialize, Deserialize)]
+#[serde(try_from = "f64", into = "f64")]
 pub struct AirWavelength(f64);
 
 impl AirWavelength {
@@ -37,6 +39,20 @@ impl AirWavelength {
             vacuum_nm = self.0 * standard_index(vacuum_nm);
         }
         VacuumWavelength(vacuum_nm)
+    }
+}
+
+impl From<AirWavelength> for f64 {
+    fn from(wavelength: AirWavelength) -> Self {
+        wavelength.0
+    }
+}
+
+impl TryFrom<f64> for AirWavelength {
+    type Error = &'static str;
+
+    fn try_from(nm: f64) -> Result<Self, Self::Error> {
+        Self::new(nm).ok_or("not a wavelength in air")
     }
 }
 

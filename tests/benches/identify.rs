@@ -1,12 +1,12 @@
 //! How long an identification takes, side by side: the search against weighing every composition,
-//! a short candidate list against the whole library, few readings against a crowded lamp.
+//! a short candidate list against the whole library, the embedded library against its tables, few readings against a crowded lamp.
 
 use criterion::{Criterion, criterion_group, criterion_main};
 use linstock::evidence::{
     Candidate, CandidateFeature, Conditions, FeatureForm, Observation, Settings, exhaustive, infer,
 };
 use linstock::reading::read_table;
-use linstock::{library, setup, verdict};
+use linstock::{embedded, library, setup, verdict};
 use std::hint::black_box;
 use std::path::Path;
 
@@ -31,7 +31,7 @@ impl Bench {
             ..Default::default()
         };
         let setup = setup::resolve(Some(file), flags)?;
-        let library = library::embedded()?;
+        let library = embedded::library()?;
         let shortlist = verdict::shortlist(&library, &setup)?;
         Ok(Self {
             shortlist,
@@ -158,5 +158,27 @@ fn search(criterion: &mut Criterion) {
     group.finish();
 }
 
-criterion_group!(benches, search, samples);
+/// The embedded library against reading the same tables from their folder.
+fn start(criterion: &mut Criterion) {
+    let mut group = criterion.benchmark_group("library");
+    group.sample_size(20);
+    let folder = Path::new(env!("CARGO_MANIFEST_DIR")).join("library");
+    group.bench_function("embedded", |b| {
+        b.iter(|| {
+            let library = embedded::library();
+            assert!(library.is_ok(), "a library that does not load");
+            black_box(library)
+        });
+    });
+    group.bench_function("from its tables", |b| {
+        b.iter(|| {
+            let library = library::load_folder(&folder);
+            assert!(library.is_ok(), "tables that do not load");
+            black_box(library)
+        });
+    });
+    group.finish();
+}
+
+criterion_group!(benches, start, search, samples);
 criterion_main!(benches);

@@ -1,9 +1,8 @@
 //! A private reference from readings of a known sample, as tables of the library's layout.
 
-use super::{SourceKind, Standing};
+use crate::library::{SourceKind, Tables};
 use crate::reading::ObservedForm;
 use crate::reduction::{ReducedReading, ReducedSample};
-use std::collections::BTreeMap;
 
 /// Scatter of strengths measured on one's own instrument against the next sample of the same
 /// kind, decades. Common practice, no source: lamps and flames differ by a factor of two to three.
@@ -55,9 +54,6 @@ pub enum EnrolError {
         reason: String,
     },
 }
-
-/// The tables of a library folder by name within it.
-pub type Tables = BTreeMap<String, String>;
 
 /// Identifier of a name: lower-case letters, digits and hyphens.
 pub fn identifier(name: &str) -> Option<String> {
@@ -121,7 +117,7 @@ pub fn enrol(
         &source,
     ];
     let citation = format!("Own readings, table with SHA-256 {}", what.digest);
-    let cited = [&source, citation.as_str(), "-", "-", standing_word()];
+    let cited = [&source, citation.as_str(), "-", "-", "measured"];
 
     let add = |table: &str, header: &[&str], key: usize, own: &str, row: &[&str]| {
         let before = folder.get(table).map_or("", String::as_str);
@@ -192,15 +188,6 @@ fn source_word(source: SourceKind) -> &'static str {
         SourceKind::Discharge => "discharge",
         SourceKind::Absorption => "absorption",
     }
-}
-
-fn standing_word() -> &'static str {
-    let known = super::layout::STANDINGS.iter();
-    known
-        .filter(|(_, standing)| *standing == Standing::Measured)
-        .map(|(word, _)| *word)
-        .next()
-        .unwrap_or_default()
 }
 
 /// A table with one row more; an earlier row with the same key gives way where that is asked for.
