@@ -1,19 +1,13 @@
 //! Guards of the reference tables that are part of the program: what the loader does not check,
-//! and each number that has an outside against that outside.
+//! and what follows from laws of nature. `library_outside.rs` compares with published tables.
 
 use linstock::embedded;
 use linstock::library::{Emitter, Feature, Form, Library, SourceKind, Standing};
 use linstock::reduction::air::VacuumWavelength;
-use std::path::Path;
 use std::sync::OnceLock;
 
 /// Bound on a line's difference from a published value, nm.
 const LINE_NM: f64 = 0.01;
-/// Bound where a row stands for fine structure, isotopes or hyperfine structure not resolved,
-/// which its uncertainty says: above [`SHARP_NM`].
-const UNRESOLVED_NM: f64 = 0.02;
-/// Uncertainty up to which a row claims a single sharp line, nm.
-const SHARP_NM: f64 = 0.006;
 
 /// Boltzmann constant, cm⁻¹ K⁻¹ (CODATA 2018, exact value of k/hc rounded).
 const BOLTZMANN_PER_CM: f64 = 0.695_034_800;
@@ -283,66 +277,4 @@ fn thermal_flame_strengths_follow_from_rates_and_levels() {
         );
     }
     assert!(compared > 500, "only {compared} rows name the rule alone");
-}
-
-/// Compares the library with a table of `tests/reference/`, whose head names its origin and recipe.
-fn compare(file: &str, at_least: usize, median_nm: f64, p95_nm: f64) {
-    let path = Path::new(env!("CARGO_MANIFEST_DIR"))
-        .join("tests/reference")
-        .join(file);
-    let mut reader = csv::ReaderBuilder::new()
-        .comment(Some(b'#'))
-        .from_path(&path)
-        .unwrap_or_else(|error| panic!("{}: {error}", path.display()));
-    let header = reader.headers().expect("a header").clone();
-    let column = |name: &str| header.iter().position(|h| h == name).expect("the column");
-    let (name, wavelength) = (column("emitter"), column("wavelength_air_nm"));
-    let mut differences = Vec::new();
-    let mut wrong = String::new();
-    for record in reader.records().map(|r| r.expect("a row")) {
-        let expected: f64 = record[wavelength].parse().expect("a number");
-        let feature = nearest(emitter(&record[name]), expected);
-        let difference = (feature.wavelength.nm() - expected).abs();
-        let sharp = feature.uncertainty_nm <= SHARP_NM;
-        if difference > if sharp { LINE_NM } else { UNRESOLVED_NM } {
-            let nearest = feature.wavelength.nm();
-            wrong.push_str(&format!(
-                "{} {expected}: nearest is {nearest}\n",
-                &record[name]
-            ));
-        }
-        differences.push(difference);
-    }
-    assert!(wrong.is_empty(), "{file}:\n{wrong}");
-    assert!(
-        differences.len() >= at_least,
-        "{file}: {} rows",
-        differences.len()
-    );
-    let spread = spread(file, differences);
-    assert!(
-        spread.median < median_nm,
-        "{file}: median {}",
-        spread.median
-    );
-    assert!(
-        spread.p95 < p95_nm,
-        "{file}: 95th percentile {}",
-        spread.p95
-    );
-}
-
-#[test]
-fn alkali_lines_agree_with_published_levels() {
-    compare("arc_levels.csv", 50, 0.0005, 0.003);
-}
-
-#[test]
-fn lamp_lines_agree_with_a_second_export() {
-    compare("lines_desispec.csv", 120, 0.0005, 0.002);
-}
-
-#[test]
-fn resonance_lines_agree_with_the_published_tables() {
-    compare("lines_linetools.csv", 120, 0.0005, 0.005);
 }
