@@ -5,6 +5,7 @@
 
 use linstock::embedded;
 use linstock::library::{Emitter, Feature, Form, Library, SourceKind, Standing};
+use linstock::reduction::air::VacuumWavelength;
 use std::collections::{BTreeMap, BTreeSet};
 use std::fmt::Write;
 use std::path::PathBuf;
@@ -190,16 +191,25 @@ fn compare<'l>(
     )
 }
 
-/// The features no outside table holds, per emitter.
-fn uncovered(library: &Library, covered: &BTreeSet<(&str, usize)>) -> (String, usize, usize) {
-    let (mut text, mut count, mut all) = (String::new(), 0, 0);
+/// Whether the levels of a line, which come from another table than its position, give it.
+fn follows_from_levels(feature: &Feature) -> bool {
+    let levels = feature.lower_level_per_cm.zip(feature.upper_level_per_cm);
+    let vacuum = levels.and_then(|(low, high)| VacuumWavelength::from_wavenumber(high - low));
+    vacuum.is_some_and(|v| (v.to_air().nm() - feature.wavelength.nm()).abs() <= bound_nm(feature))
+}
+
+/// The features no outside table holds, per emitter; their number, how many of them follow from
+/// their levels, and the number of all.
+fn uncovered(library: &Library, covered: &BTreeSet<(&str, usize)>) -> (String, [usize; 3]) {
+    let (mut text, mut count, mut by_levels, mut all) = (String::new(), 0, 0, 0);
     for (name, emitter) in emitters(library) {
         all += emitter.features.len();
-        let left: Vec<String> = (emitter.features.iter())
+        let left: Vec<&Feature> = (emitter.features.iter())
             .filter(|f| !covered.contains(&(name, f.row)))
-            .map(|f| format!("{}", f.wavelength.nm()))
             .collect();
         count += left.len();
+        by_levels += left.iter().filter(|f| follows_from_levels(f)).count();
+        let left: Vec<String> = left.iter().map(|f| f.wavelength.nm().to_string()).collect();
         if !left.is_empty() {
             let total = emitter.features.len();
             let line = format!("{name}, {} of {total}: {}", left.len(), left.join(" "));
@@ -208,7 +218,7 @@ fn uncovered(library: &Library, covered: &BTreeSet<(&str, usize)>) -> (String, u
             text.push('\n');
         }
     }
-    (text, count, all)
+    (text, [count, by_levels, all])
 }
 
 /// One row per emitter: features, strengths by kind of source, standing of the sources.
@@ -298,8 +308,12 @@ fn positions_agree_with_every_outside_table() {
     for outside in &OUTSIDE {
         table.push_str(&compare(outside, &emitters, &mut covered));
     }
-    let (list, count, all) = uncovered(&library, &covered);
-    writeln!(table, "\nNo outside source covers {count} of {all} rows.").expect("text");
+    let (list, [count, by_levels, all]) = uncovered(&library, &covered);
+    writeln!(
+        table,
+        "\nNo outside table covers {count} of {all} rows; {by_levels} of these follow from the levels beside them."
+    )
+    .expect("text");
     assert_eq!(block("library/README.md", "differences", &table), table);
 
     let golden = "tests/golden/library_uncovered.txt";

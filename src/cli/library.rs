@@ -1,5 +1,6 @@
 //! `linstock library`: what is known.
 
+use super::compute;
 use super::enrol;
 use super::options::LibraryOptions;
 use super::{Exit, Failure};
@@ -25,6 +26,8 @@ pub(super) enum LibraryCommand {
     Lines(LinesOptions),
     /// Check a folder of tables
     Check(CheckOptions),
+    /// Compute strengths that follow from rates and levels by a rule
+    Compute(compute::ComputeOptions),
     /// Make a reference of your own from readings of a known sample
     Enrol(Box<enrol::EnrolOptions>),
 }
@@ -127,6 +130,7 @@ pub(super) fn run(command: &LibraryCommand) -> Result<Exit, Failure> {
         LibraryCommand::Show(options) => show(options),
         LibraryCommand::Lines(options) => lines(options),
         LibraryCommand::Check(options) => check(options),
+        LibraryCommand::Compute(options) => return compute::run(options),
         LibraryCommand::Enrol(options) => enrol::run(options),
     }?;
     Ok(Exit::Decisive)

@@ -1,5 +1,6 @@
 //! The command line: flags as typed, resolved into plain settings. No mathematics here.
 
+mod compute;
 mod enrol;
 mod exit;
 mod failure;

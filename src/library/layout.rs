@@ -92,7 +92,7 @@ pub(super) const EMITTERS: [Column; 10] = [
     optional("remark"),
     needed("source"),
 ];
-pub(super) const FEATURES: [Column; 18] = [
+pub(super) const FEATURES: [Column; 19] = [
     needed("emitter"),
     needed("form"),
     needed("wavelength_air_nm"),
@@ -111,6 +111,7 @@ pub(super) const FEATURES: [Column; 18] = [
     needed("source_position"),
     needed("source_strength"),
     optional("note"),
+    optional("published_intensity"),
 ];
 pub(super) const COMPOSED: [Column; 3] = [needed("name"), needed("parts"), optional("where_met")];
 pub(super) const LISTS: [Column; 2] = [needed("list"), needed("substance")];

@@ -2,6 +2,7 @@
 //! its source. Loading checks everything; a loaded library is consistent.
 
 mod assemble;
+mod compute;
 mod draft;
 mod layout;
 mod load;
@@ -9,6 +10,7 @@ mod names;
 mod priors;
 mod table;
 
+pub use compute::{Computation, Difference, compute};
 pub use load::{
     LibraryError, LibraryFault, Tables, extend_from, extend_with, load_folder, read_tables,
 };

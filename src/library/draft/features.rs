@@ -75,6 +75,7 @@ fn feature(
         from,
         strength_from,
         note,
+        intensity,
     ] = cells;
     let strength_dex =
         [flame, discharge, absorption].map(|cell| row.number_if_any(cell, STRENGTH_DEX));
@@ -91,6 +92,8 @@ fn feature(
     {
         row.fault(upper, format!("is not above the lower level {low}"));
     }
+    // Of use to the rules only, not to the program.
+    row.number_if_any(intensity, POSITIVE);
     let Some(wavelength) = AirWavelength::new(nm) else {
         row.fault(wavelength, "is not a wavelength in air");
         return None;

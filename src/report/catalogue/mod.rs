@@ -8,7 +8,7 @@ mod view;
 
 pub use colour::colour_word;
 pub use page::{PageView, substance_page};
-pub use text::{cautions_text, lines_text, list_text, page_text};
+pub use text::{cautions_text, computation_text, lines_text, list_text, page_text};
 pub use view::{FeatureView, ListedView, Within, features, listed};
 
 use super::json::guarded;

@@ -2,7 +2,7 @@
 
 use super::page::{EmitterView, PageView};
 use super::view::{FeatureView, ListedView};
-use crate::library::SourceKind;
+use crate::library::{Computation, SourceKind};
 use crate::report::layout::{Align, Cell, columns, heading, paragraph};
 use crate::verdict::wording::wavelength;
 
@@ -31,6 +31,37 @@ pub fn list_text(substances: &[ListedView]) -> String {
         heading(&format!("{} substances", substances.len())),
         columns(&rows, &[Align::Left; 4])
     )
+}
+
+/// Strengths that follow from their rules, and those that do not.
+pub fn computation_text(folder: &str, found: &Computation, written: bool) -> String {
+    let differ = found.differ.len();
+    let end = match (differ, written) {
+        (0, _) => "every other one is stated on its own".to_owned(),
+        (_, true) => format!("{differ} did not and were put in"),
+        (1, false) => "1 does not (--write puts the computed value in)".to_owned(),
+        (_, false) => format!("{differ} do not (--write puts the computed values in)"),
+    };
+    let sum = format!(
+        "{folder}: {} strengths follow from the rules their rows name; {end}.",
+        found.agree
+    );
+    let mut text = paragraph(&sum, "", "");
+    if differ > 0 {
+        let mut rows = vec![cells(["table", "row", "stands", "follows", "feature"])];
+        rows.extend(found.differ.iter().map(|d| {
+            let (row, follows) = (d.row.to_string(), format!("{:.2}", d.follows_dex));
+            let kind = d
+                .column
+                .trim_start_matches("strength_")
+                .trim_end_matches("_dex");
+            let feature = format!("{}, {kind}", d.feature);
+            cells([&d.table, &row, &d.stands, &follows, &feature])
+        }));
+        let right = Align::Right;
+        text.push_str(&columns(&rows, &[Align::Left, right, right, right]));
+    }
+    text
 }
 
 /// Lines and band heads.
