@@ -13,8 +13,9 @@ mod reduction {
 
 use std::error::Error;
 use std::path::Path;
+use std::process::ExitCode;
 
-fn main() -> Result<(), Box<dyn Error>> {
+fn main() -> ExitCode {
     for watched in [
         "library",
         "src/library",
@@ -23,11 +24,18 @@ fn main() -> Result<(), Box<dyn Error>> {
     ] {
         println!("cargo::rerun-if-changed={watched}");
     }
+    match compile() {
+        Ok(()) => ExitCode::SUCCESS,
+        Err(error) => {
+            eprintln!("{error}");
+            ExitCode::FAILURE
+        }
+    }
+}
+
+fn compile() -> Result<(), Box<dyn Error>> {
     let folder = Path::new(&std::env::var("CARGO_MANIFEST_DIR")?).join("library");
-    let compiled = match library::load_folder(&folder) {
-        Ok(library) => postcard::to_stdvec(&library)?,
-        Err(fault) => return Err(fault.to_string().into()),
-    };
+    let compiled = postcard::to_stdvec(&library::load_folder(&folder)?)?;
     let target = Path::new(&std::env::var("OUT_DIR")?).join("library.bin");
     std::fs::write(target, compiled)?;
     Ok(())

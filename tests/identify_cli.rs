@@ -53,6 +53,30 @@ fn nothing_to_read_is_bad_data() -> Outcome {
     Ok(())
 }
 
+fn text(table: &str, flags: &[&str]) -> Result<String, Box<dyn std::error::Error>> {
+    Ok(String::from_utf8(identify(table, flags)?.stdout)?)
+}
+
+/// Sodium D 588.995 and 589.592 nm (NIST ASD) are not resolved by a hand spectroscope.
+#[test]
+fn sodium_before_a_white_lamp_is_a_dark_line() -> Outcome {
+    let table = "wavelength_nm,uncertainty_nm\n589.2,1.5\n";
+    let found = text(table, &["--instrument", "prism", "--source", "absorption"])?;
+    assert!(found.starts_with("Sodium: probability"), "{found}");
+    Ok(())
+}
+
+/// A filament: one maximum hundreds of nanometres wide (common practice, no source).
+#[test]
+fn a_continuous_spectrum_is_said_to_be_one() -> Outcome {
+    let table = "wavelength_nm,uncertainty_nm,form,width_nm\n620,5,band,300\n";
+    for source in ["flame", "discharge", "absorption"] {
+        let found = text(table, &["--instrument", "ccd", "--source", source])?;
+        assert!(found.starts_with("A continuous spectrum"), "{found}");
+    }
+    Ok(())
+}
+
 #[test]
 fn usage_missing_input_and_unwritable_output_have_their_own_status() -> Outcome {
     assert_eq!(status(CLEAR, &["--range", "700:400"])?, Some(2));

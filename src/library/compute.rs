@@ -15,7 +15,7 @@ const DAYLIGHT_K: f64 = 5000.0;
 const OSCILLATOR: f64 = 1.499_19e-16;
 /// Peak optical depth in a visibly coloured flame, and the emitters that colour it most.
 const PEAK_DEPTH: f64 = 30.0;
-const PEAK_DEPTH_ALKALI: f64 = 100.0;
+const PEAK_DEPTH_ALKALI: f64 = 1000.0;
 const ALKALI: [&str; 5] = ["Li I", "Na I", "K I", "Rb I", "Cs I"];
 /// Strengths have two decimals, and rates three figures.
 const ROUNDING_DEX: f64 = 0.011;
@@ -358,10 +358,10 @@ mod tests {
         assert_eq!((again.agree, again.differ.len()), (1, 0));
     }
 
-    /// The only line of an emitter is its deepest: it loses half of log10 30 (or 100 for sodium).
+    /// The only line of an emitter is its deepest: it loses half of log10 30 (or 1000 for sodium).
     #[test]
     fn growth_takes_half_the_decades_above_depth_one() {
-        for (emitter, depth) in [("Ca I", 30.0_f64), ("Na I", 100.0)] {
+        for (emitter, depth) in [("Ca I", 30.0_f64), ("Na I", 1000.0)] {
             let row = |rules: &str| format!("{emitter},400,,,1e8,3,0,25000,,{rules},\n");
             let dex = |rules: &str| {
                 let found = compute(&tables(&row(rules))).expect("computed");

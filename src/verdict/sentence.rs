@@ -5,6 +5,7 @@ use super::decision::Decision;
 use super::either_or::LeadingGroup;
 use super::warning::Warning;
 use super::wording::{alternatives, list, probability, sentence_case};
+use crate::reduction::AsideReason;
 use crate::setup::Candidates;
 
 /// From here on a leader that is not decisive is called most likely rather than possible.
@@ -20,7 +21,7 @@ pub(super) fn answer(
 ) -> String {
     let shown = probability(group.posterior);
     if case.sample.readings.is_empty() {
-        return "No reading could be used, so nothing can be said.".to_owned();
+        return without_readings(warnings).to_owned();
     }
     if decision == Decision::Unexplained {
         let weighed = match case.setup.candidates() {
@@ -63,6 +64,21 @@ pub(super) fn answer(
             "Perhaps"
         };
         format!("{likely} {finding}: probability {shown}, not decisive.")
+    }
+}
+
+/// The answer where no reading is left.
+fn without_readings(warnings: &[Warning]) -> &'static str {
+    let mut reasons = warnings.iter().filter_map(|warning| match warning {
+        Warning::ReadingsSetAside { reason, .. } => Some(*reason),
+        _ => None,
+    });
+    match (reasons.next(), reasons.next()) {
+        (Some(AsideReason::ContinuumMaximum), None) => {
+            "A continuous spectrum: all that was read is wider than a line, so no substance can be \
+             named."
+        }
+        _ => "No reading could be used, so nothing can be said.",
     }
 }
 
