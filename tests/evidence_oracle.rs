@@ -200,7 +200,7 @@ const PAIR_P95: f64 = 0.10;
 const TRIPLE_P95: f64 = 0.18;
 /// See above, where lines of three members blend and the amounts that count are too many to be
 /// integrated jointly now and then.
-const BLENDED_TRIPLE_P95: f64 = 0.30;
+const BLENDED_TRIPLE_P95: f64 = 0.18;
 
 #[test]
 fn product_of_profiles_is_near_the_joint_grid_for_pairs() {

@@ -261,14 +261,14 @@ fn cost(order: &[(usize, usize, usize)], last: &mut Vec<usize>) -> f64 {
     for (place, (_, inner, _)) in order.iter().enumerate() {
         last[*inner] = place;
     }
-    let mut open = 0i32;
+    let mut open = 0u32;
     let mut total = 0.0;
     let mut first_seen = vec![true; count];
     for (place, (_, inner, _)) in order.iter().enumerate() {
         if std::mem::replace(&mut first_seen[*inner], false) {
             open += 1;
         }
-        total += f64::from(open.min(FRONTIER as i32)).exp2();
+        total += f64::from(1u32 << open.min(FRONTIER as u32));
         if last[*inner] == place {
             open -= 1;
         }

@@ -16,6 +16,10 @@ const JOINT_LN: f64 = -7.0;
 /// Amount nodes this far below the best take the integral over emitter shifts from their neighbours.
 const MINOR_LN: f64 = -3.5;
 
+/// Without strengths the integral over emitter shifts changes slowly with the amounts, and is
+/// taken at every so many nodes. A strength fixes the sum of amount and shift.
+const FACTOR_STEP: usize = 3;
+
 impl Profile<'_, '_> {
     /// The integrand for the amounts of one member, outwards from the present one until it has
     /// fallen too far to count.
@@ -48,15 +52,16 @@ impl Profile<'_, '_> {
             .into_iter()
             .map(|(k, point)| (vec![k], point))
             .collect();
-        self.integral(&[m], points, mode)
+        self.integral(&[m], points, 1, mode)
     }
 
     /// ln Σ over amounts of Π w/Z · L*(amounts)/L*(mode), the emitter shifts of `members`
-    /// integrated.
+    /// integrated. Points are given at every `step`-th amount node, counted from the mode.
     pub(super) fn integral(
         &mut self,
         members: &[usize],
         points: Vec<(Vec<usize>, Point)>,
+        step: usize,
         mode: &Slice,
     ) -> Slice {
         let ln_z: f64 = members
@@ -68,17 +73,27 @@ impl Profile<'_, '_> {
             .iter()
             .map(|(_, p)| peak(&p.slice))
             .fold(f64::NEG_INFINITY, f64::max);
+        let centre: Vec<usize> = members.iter().map(|m| self.latents[*m].amount).collect();
+        let with_strengths =
+            (self.stock.scene.observations.iter()).any(|o| o.strength_dex.is_some());
+        let factor_step = if with_strengths { 1 } else { FACTOR_STEP };
         let factors: Vec<Option<Slice>> = points
             .iter()
-            .map(|(_, p)| (peak(&p.slice) > best + MINOR_LN).then(|| self.shift_factor(members, p)))
+            .map(|(amounts, p)| {
+                let sampled =
+                    on_grid(amounts, &centre, factor_step) && peak(&p.slice) > best + MINOR_LN;
+                sampled.then(|| self.shift_factor(members, p))
+            })
             .collect();
-        let weights = self.stock.scene.amount.weights();
+        let weights: Vec<Vec<f64>> = (centre.iter())
+            .map(|c| thinned(self.stock.scene.amount.weights(), *c, step))
+            .collect();
         let mut sums = vec![[0.0; LANES]; mode.len()];
         for (amounts, point) in &points {
             let Some(factor) = nearest(&points, &factors, amounts) else {
                 continue;
             };
-            let weight: f64 = amounts.iter().map(|k| weights[*k]).product();
+            let weight: f64 = amounts.iter().zip(&weights).map(|(k, w)| w[*k]).product();
             for (d, sum) in sums.iter_mut().enumerate() {
                 for l in 0..LANES {
                     sum[l] += weight * (point.slice[d][l] + factor[d][l] - mode[d][l]).exp();
@@ -169,7 +184,8 @@ impl Profile<'_, '_> {
         let points = (joint && entangled).then(|| self.joint_points()).flatten();
         if let Some(points) = points {
             let members: Vec<usize> = (0..self.assembly.members.len()).collect();
-            add(&mut total, &self.integral(&members, points, &mode));
+            let step = joint_step(members.len());
+            add(&mut total, &self.integral(&members, points, step, &mode));
         } else {
             for m in 0..self.assembly.members.len() {
                 add(&mut total, &self.member_profile(m, &mode));
@@ -186,6 +202,7 @@ impl Profile<'_, '_> {
         let dearest = self.work_done + MOST_WORK;
         let count = self.stock.scene.amount.len();
         let mode: Vec<usize> = self.latents.iter().map(|l| l.amount).collect();
+        let step = joint_step(mode.len());
         let mut met: BTreeSet<Vec<usize>> = BTreeSet::from([mode.clone()]);
         let mut open = vec![mode];
         let mut points = Vec::new();
@@ -196,7 +213,7 @@ impl Profile<'_, '_> {
             let value = self.ln_weighted(&point.slice);
             best = best.max(value);
             if value > best + JOINT_LN {
-                open.extend(neighbours(&amounts, count).filter(|n| met.insert(n.clone())));
+                open.extend(neighbours(&amounts, step, count).filter(|n| met.insert(n.clone())));
             }
             points.push((amounts, point));
             if points.len() > MOST_POINTS || self.work_done > dearest {
@@ -280,6 +297,11 @@ fn grid(stock: &Stock, prepared: &Prepared) -> Vec<(Latent, f64)> {
     states
 }
 
+/// Whether amounts lie a multiple of `step` from the mode.
+fn on_grid(amounts: &[usize], centre: &[usize], step: usize) -> bool {
+    (amounts.iter().zip(centre)).all(|(a, c)| a.abs_diff(*c).is_multiple_of(step))
+}
+
 /// The factor of the nearest point that has one.
 fn nearest<'f>(
     points: &[(Vec<usize>, Point)],
@@ -296,10 +318,36 @@ fn nearest<'f>(
         .map(|(_, factor)| factor)
 }
 
-/// Amount nodes one step away in one member.
-fn neighbours(amounts: &[usize], count: usize) -> impl Iterator<Item = Vec<usize>> {
+/// Of three members and more, every second amount node is taken: the nodes stand closer than the
+/// scatter of strengths.
+fn joint_step(members: usize) -> usize {
+    if members < 3 { 1 } else { 2 }
+}
+
+/// Weights of the nodes a multiple of `step` from `centre`, with those of the nodes nearest to
+/// them; nodes halfway between two are shared.
+fn thinned(weights: &[f64], centre: usize, step: usize) -> Vec<f64> {
+    let kept: Vec<usize> = (centre % step..weights.len()).step_by(step).collect();
+    let mut out = vec![0.0; weights.len()];
+    for (k, weight) in weights.iter().enumerate() {
+        let near = kept.iter().map(|c| c.abs_diff(k)).min().unwrap_or(0);
+        let owners: Vec<usize> = kept
+            .iter()
+            .copied()
+            .filter(|c| c.abs_diff(k) == near)
+            .collect();
+        for owner in &owners {
+            out[*owner] += weight / owners.len() as f64;
+        }
+    }
+    out
+}
+
+/// Amount nodes `step` away in one member.
+fn neighbours(amounts: &[usize], step: usize, count: usize) -> impl Iterator<Item = Vec<usize>> {
+    let step = step as isize;
     (0..amounts.len())
-        .flat_map(|m| [(m, -1isize), (m, 1)])
+        .flat_map(move |m| [(m, -step), (m, step)])
         .filter_map(move |(m, step)| {
             let next = amounts[m].checked_add_signed(step).filter(|k| *k < count)?;
             let mut amounts = amounts.to_vec();

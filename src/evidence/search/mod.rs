@@ -28,12 +28,13 @@ pub struct Found {
 /// the amounts, which the estimate holds fixed.
 const BLEND_ALLOWANCE: f64 = 4.0;
 /// Compositions estimated to lie this far below the best, in nats, keep the estimate.
-const ROUGH_LN: f64 = -9.0;
-/// Compositions this far below the best keep the product of profiles, which lines that blend can
-/// make too small by up to three nats.
-const PROFILES_LN: f64 = -7.0;
+const ROUGH_LN: f64 = -8.0;
+/// Compositions this far below the best keep the product of profiles; those in which lines blend
+/// only further down, for there the product can be too small by up to three nats.
+const PROFILES_LN: f64 = -4.5;
+const PROFILES_BLENDED_LN: f64 = -6.0;
 /// Compositions estimated to lie this far below the best serve as a base for estimates as they are.
-const FAR_BEHIND_LN: f64 = -9.0;
+const FAR_BEHIND_LN: f64 = -8.0;
 /// Work on the leaders after the search may take the total to this many times its limit.
 const AFTERMATH: f64 = 1.5;
 /// Compositions evaluated per round, whatever the number of threads.
@@ -221,7 +222,11 @@ impl Search<'_, '_> {
     fn refine(&mut self) -> bool {
         let best = self.best();
         let wanted = |node: &Node| {
-            if node.ln_weight > best + PROFILES_LN {
+            let profiles_ln = match node.weighed.chains {
+                0 => PROFILES_LN,
+                _ => PROFILES_BLENDED_LN,
+            };
+            if node.ln_weight > best + profiles_ln {
                 Care::Joint
             } else if node.ln_hope > best + ROUGH_LN {
                 Care::Profiles
